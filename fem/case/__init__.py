@@ -1,0 +1,1 @@
+"""Case files: TOML into frozen, checked tables."""

@@ -1,0 +1,188 @@
+"""A case: what is frozen, how, for how long, and what is asked of it. Frozen, checked, in SI."""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass, field
+from typing import Annotated, Any, Self
+
+from pydantic import BaseModel, ConfigDict, Field, PlainValidator, model_validator
+
+from fem.errors import Problem, Refused
+from fem.heat.exchange import Exchange
+from fem.march.control import Stepping
+from fem.mesh.shape import Section, Shape
+from fem.quantity import TEMPERATURE, Duration, Length, Temperature
+from fem.watch.schedule import Watch
+
+_UNTIL = re.compile(r"\s*(?:point\.)?([A-Za-z0-9_-]+)\s*(<=|>=)\s*(.+?)\s*")
+
+
+class Piece(BaseModel):
+    """What one piece is, apart from its shape.
+
+    Parameters
+    ----------
+    section
+        Whether the shape is in (x, y) or in (r, z).
+    length
+        Of a plane piece along the normal [m]; None where axisymmetric.
+    start_temperature
+        Of every region that `start` does not name [degC].
+    start
+        Region -> start temperature [degC].
+
+    """
+
+    model_config = ConfigDict(frozen=True, extra="forbid")
+
+    section: Section
+    length: Length | None = None
+    start_temperature: Temperature | None = None
+    start: dict[str, Temperature] = {}
+
+    @model_validator(mode="after")
+    def _length_fits(self) -> Self:
+        if self.section == "plane" and self.length is None:
+            message = 'is missing: heat and mass of a plane piece need its length, such as "83 mm"'
+            raise Refused([Problem("length", message)])
+        if self.section == "axisymmetric" and self.length is not None:
+            message = "has no meaning for an axisymmetric piece, which is a full revolution; leave it out"
+            raise Refused([Problem("length", message)])
+        return self
+
+    def start_of(self, region: str) -> float:
+        """Return the start temperature of a region [degC]."""
+        start = self.start.get(region, self.start_temperature)
+        assert start is not None, "a case is checked for this when read"
+        return start
+
+
+@dataclass(frozen=True)
+class Until:
+    """What ends a stage before its time is up.
+
+    Parameters
+    ----------
+    at
+        "slowest", or the name of a watched point.
+    below
+        Whether the temperature has to fall to `temperature`; else to rise to it.
+    temperature
+        [degC].
+
+    """
+
+    at: str
+    below: bool
+    temperature: float
+
+    @classmethod
+    def read(cls, raw: Any) -> Until:
+        """Return the condition that a case's text means, such as ``"slowest <= -12 degC"``.
+
+        Raises
+        ------
+        ValueError
+            Any other text; PydanticCustomError where the temperature is wrong.
+
+        """
+        if isinstance(raw, Until):
+            return raw
+        match = _UNTIL.fullmatch(raw) if isinstance(raw, str) else None
+        if match is None:
+            found = f'"{raw}"' if isinstance(raw, str) else raw
+            form = 'is written like "slowest <= -12 degC": a point, <= or >=, a temperature'
+            raise ValueError(f"{form}; got {found}")
+        return cls(match[1], match[2] == "<=", TEMPERATURE.read(match[3]))
+
+
+class Stage(BaseModel):
+    """One stage: what each surface meets, and for how long.
+
+    Parameters
+    ----------
+    name
+        Said in the answer and used by overrides.
+    lasts
+        Longest duration [s].
+    until
+        What may end it earlier; None for nothing.
+    surfaces
+        Surface -> exchange; a surface without entry is insulated.
+
+    """
+
+    model_config = ConfigDict(frozen=True, extra="forbid")
+
+    name: Annotated[str, Field(min_length=1)]
+    lasts: Duration
+    until: Annotated[Until, PlainValidator(Until.read)] | None = None
+    surfaces: dict[str, Exchange] = {}
+
+
+class Aim(BaseModel):
+    """The question of the case: a temperature to reach, in time.
+
+    Parameters
+    ----------
+    at
+        "slowest", or the name of a watched point.
+    reach
+        Temperature to reach [degC].
+    within
+        Time since the run began [s]; None where any time will do.
+
+    """
+
+    model_config = ConfigDict(frozen=True, extra="forbid")
+
+    at: str = "slowest"
+    reach: Temperature
+    within: Duration | None = None
+
+
+@dataclass(frozen=True)
+class Case:
+    """A case file as read: every number in SI, temperatures in degC.
+
+    Parameters
+    ----------
+    schema
+        Version of the case language.
+    title
+        What is asked, in the user's words.
+    piece, shape
+        What is frozen.
+    regions
+        Region of the shape -> name of its material.
+    materials
+        Name -> material as given.
+    stages
+        In their order; one at least.
+    watch, aim, stepping
+        What is looked at, what is asked, how closely time is followed.
+    text
+        The case as run, overrides applied.
+    source
+        What was read, as the user named it.
+
+    """
+
+    schema: int
+    title: str
+    piece: Piece
+    shape: Shape
+    regions: dict[str, str]
+    materials: dict[str, Any]
+    stages: tuple[Stage, ...]
+    watch: Watch
+    aim: Aim | None
+    stepping: Stepping
+    text: str = field(repr=False)
+    source: str
+
+    @property
+    def lasts(self) -> float:
+        """Longest duration of the whole run [s]."""
+        return sum(stage.lasts for stage in self.stages)

@@ -1,0 +1,1 @@
+"""The heat problem: forms, exchanges, stored heat and its Jacobian."""

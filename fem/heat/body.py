@@ -1,0 +1,211 @@
+"""A meshed piece with its materials: what every node holds and how heat passes between nodes."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+import scipy.sparse as sp
+from scipy.spatial import cKDTree
+
+from fem.curve import Array, Curve, State
+from fem.heat import forms
+from fem.heat.linear import Factor, Pattern, factor_for
+from fem.material import Material
+from fem.mesh.domain import Domain
+
+
+@dataclass(frozen=True, eq=False)
+class Part:
+    """All cells of one material.
+
+    Parameters
+    ----------
+    material
+        Its curve is the only one these cells know, also where they touch another part.
+    nodes
+        Nodes that hold some of it, shape (n,).
+    volume
+        Volume of it that each of those nodes stands for [m3], shape (n,).
+    stiffness
+        Conductance between nodes for unit conductivity along the common pattern [m].
+    hosted
+        Nodes whose enthalpy is this material's own.
+    guest
+        Nodes that hold some of it, but whose enthalpy is another's; the temperature is shared.
+
+    """
+
+    material: Material
+    nodes: np.ndarray
+    volume: Array
+    stiffness: sp.csr_matrix
+    hosted: np.ndarray
+    guest: np.ndarray
+
+    @property
+    def curve(self) -> Curve:
+        """The enthalpy, temperature and conductivity of the material."""
+        return self.material.curve
+
+
+class Body:
+    """The part of the problem that no stage changes.
+
+    The unknown is one enthalpy per node, of the node's host material: product before mould.
+    A node on an interface holds two materials, carries the product's enthalpy, and the wall's
+    follows from the common temperature.
+
+    Parameters
+    ----------
+    domain
+        Mesh, regions and surfaces.
+    materials
+        Region -> material; regions of one `Material` object are solved as one part.
+
+    """
+
+    def __init__(self, domain: Domain, materials: Mapping[str, Material]):
+        self.domain = domain
+        self.materials = dict(materials)
+        self.size = domain.points.shape[1]
+        self.volumes = {region: forms.volumes(domain, region) for region in domain.regions}
+        entries = {region: forms.conductance(domain, region) for region in domain.regions}
+        self.pattern = Pattern(
+            np.concatenate([rows for rows, _, _ in entries.values()]),
+            np.concatenate([columns for _, columns, _ in entries.values()]),
+            self.size,
+        )
+        self.parts = self._parts(entries)
+        self.single = len(self.parts) == 1
+        self.exposures = {name: forms.exposure(domain, name) for name in domain.surfaces}
+        self._leader = self._nearest_product()
+        self._factor: Factor | None = None
+
+    @property
+    def factor(self) -> Factor:
+        """The linear solver of the pattern, ordered once."""
+        if self._factor is None:
+            self._factor = factor_for(self.pattern)
+        return self._factor
+
+    def _parts(self, entries: dict) -> list[Part]:
+        """Group regions by material; materials that freeze host the nodes they touch."""
+        unique = list({id(m): m for m in self.materials.values()}.values())
+        parts = []
+        taken = np.zeros(self.size, dtype=bool)
+        for material in sorted(unique, key=lambda m: not m.freezes):
+            regions = [region for region, m in self.materials.items() if m is material]
+            volume = sum((self.volumes[region] for region in regions), np.zeros(self.size))
+            data = sum((self.pattern.gather(*entries[r]) for r in regions), np.zeros(len(self.pattern.rows)))
+            nodes = np.flatnonzero(volume > 0)
+            hosted = nodes[~taken[nodes]]
+            guest = nodes[taken[nodes]]
+            taken[nodes] = True
+            parts.append(Part(material, nodes, volume[nodes], self.pattern.matrix(data), hosted, guest))
+        return parts
+
+    def _nearest_product(self) -> np.ndarray:
+        """For each node, the one whose conductivity scales its unknown (see `HeatProblem`)."""
+        leader = np.arange(self.size)
+        frozen = [part.hosted for part in self.parts if part.material.freezes]
+        others = [part.hosted for part in self.parts if not part.material.freezes]
+        if frozen and others:
+            product, rest = np.concatenate(frozen), np.concatenate(others)
+            _, near = cKDTree(self.domain.points[:, product].T).query(self.domain.points[:, rest].T)
+            leader[rest] = product[near]
+        return leader
+
+    def state(self, u: Array) -> State:
+        """Return each node's temperature, and its host's Kirchhoff integral, capacity, conductivity."""
+        if self.single:
+            return self.parts[0].curve.at(u)
+        out = State(*(np.empty(self.size) for _ in range(4)))
+        for part in self.parts:
+            for whole, values in zip(out, part.curve.at(u[part.hosted]), strict=True):
+                whole[part.hosted] = values
+        return out
+
+    def temperature(self, u: Array) -> Array:
+        """Return the temperature of each node [degC]."""
+        return self.state(u).temperature
+
+    def enthalpy_at(self, T: Array, nodes: np.ndarray) -> Array:
+        """Return the host's enthalpy [J/m3] of some nodes at temperatures [degC]."""
+        out = np.empty(len(nodes))
+        for part in self.parts:
+            here = np.isin(nodes, part.hosted)
+            out[here] = part.curve.enthalpy(T[here])
+        return out
+
+    def stored(self, u: Array, state: State) -> tuple[Array, Array]:
+        """Return the heat each node holds [J] and its derivative to the node's temperature [J/K]."""
+        if self.single:
+            volume = self.parts[0].volume
+            return volume * u, volume * state.capacity
+        held, slope = np.zeros(self.size), np.zeros(self.size)
+        for part in self.parts:
+            H, c = u[part.nodes], state.capacity[part.nodes]
+            if len(part.guest):
+                at = np.searchsorted(part.nodes, part.guest)
+                T = state.temperature[part.guest]
+                H[at], c[at] = part.curve.enthalpy(T), part.curve.capacity(T)
+            held[part.nodes] += part.volume * H
+            slope[part.nodes] += part.volume * c
+        return held, slope
+
+    def conduction(self, state: State) -> Array:
+        """Return the heat that reaches each node from its neighbours [W].
+
+        Each part drives its own Kirchhoff integral through its own constant stiffness, so no
+        conductivity is ever averaged over a cell that the front crosses.
+        """
+        if self.single:
+            return np.asarray(-(self.parts[0].stiffness @ state.kirchhoff))
+        flow = np.zeros(self.size)
+        for part in self.parts:
+            theta = np.zeros(self.size)
+            theta[part.hosted] = state.kirchhoff[part.hosted]
+            if len(part.guest):
+                theta[part.guest] = part.curve.kirchhoff(state.temperature[part.guest])
+            flow -= part.stiffness @ theta
+        return flow
+
+    def scale(self, state: State) -> Array:
+        """Return the conductivity that scales each node's unknown: its own, or the nearest product's."""
+        return state.conductivity if self.single else state.conductivity[self._leader]
+
+    def stiffness(self, state: State, scale: Array) -> Array:
+        """Return the Jacobian of conduction for the scaled unknown, along the pattern [m].
+
+        Exact and constant within a part; between parts the geometric mean of both ends keeps it
+        symmetric, and takes as few iterations as the unsymmetric exact one.
+        """
+        if self.single:
+            return self.parts[0].stiffness.data
+        data = np.zeros(len(self.pattern.rows))
+        for part in self.parts:
+            k = np.zeros(self.size)
+            k[part.hosted] = state.conductivity[part.hosted]
+            if len(part.guest):
+                k[part.guest] = part.curve.conductivity(state.temperature[part.guest])
+            root = np.sqrt(k / scale)
+            data += part.stiffness.data * root[self.pattern.rows] * root[self.pattern.columns]
+        return data
+
+    def heat(self, u: Array) -> dict[str, float]:
+        """Return the heat held by each region of the whole piece [J]."""
+        T = self.temperature(u)
+        out = {}
+        for region, material in self.materials.items():
+            part = next(p for p in self.parts if p.material is material)
+            H = np.zeros(self.size)
+            H[part.hosted] = u[part.hosted]
+            H[part.guest] = part.curve.enthalpy(T[part.guest])
+            out[region] = float(self.volumes[region] @ H)
+        return out
+
+    def masses(self) -> dict[str, float]:
+        """Return the mass of each region of the whole piece [kg]."""
+        return {r: float(self.volumes[r].sum()) * m.density for r, m in self.materials.items()}

@@ -1,0 +1,207 @@
+"""The heat problem of one stage, in the handful of terms that the march asks for."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+
+from fem.curve import Array, State
+from fem.heat.body import Body
+from fem.heat.exchange import Exchange, Fixed
+
+
+@dataclass(frozen=True, eq=False)
+class Look:
+    """A state looked at: all that follows from the enthalpies at one moment.
+
+    Parameters
+    ----------
+    stored
+        Heat each node holds [J].
+    rate
+        Heat that reaches each node [W]; at nodes of fixed temperature what conduction brings.
+    passed
+        Heat that leaves through each surface [W], in the order of `HeatProblem.surfaces`; for a
+        fixed surface what conduction brings to its nodes.
+    state
+        Temperature and the host's properties at each node.
+    slope
+        Derivative of `stored` to temperature [J/K].
+    exchange_slope
+        Derivative of what leaves to temperature, at each node [W/K].
+
+    """
+
+    u: Array
+    stored: Array
+    rate: Array
+    passed: Array
+    state: State
+    slope: Array
+    exchange_slope: Array
+
+    @property
+    def stored_slope(self) -> Array:
+        """Derivative of what a node holds to its unknown, the host's enthalpy [m3]."""
+        return self.slope / self.state.capacity
+
+
+class HeatProblem:
+    """Conduction in a body whose surfaces exchange heat.
+
+    Parameters
+    ----------
+    body
+        Mesh and materials.
+    exchanges
+        Surface -> exchange; surfaces that are not named are insulated.
+    began
+        When the stage began [s]; the exchanges' clocks start there.
+    span
+        Lowest and highest temperature that the run will see [degC]: what errors are measured by.
+
+    """
+
+    def __init__(
+        self, body: Body, exchanges: Mapping[str, Exchange], began: float, span: tuple[float, float]
+    ):
+        self.body = body
+        self.began = began
+        self.exchanges = dict(exchanges)
+        self.surfaces = tuple(self.exchanges)
+        self._exposed = {}
+        self._fixed: dict[str, np.ndarray] = {}
+        held = np.zeros(body.size, dtype=bool)
+        for name, exchange in self.exchanges.items():
+            area = body.exposures[name]
+            nodes = np.flatnonzero(area > 0)
+            if isinstance(exchange, Fixed):
+                self._fixed[name] = nodes[~held[nodes]]
+                held[nodes] = True
+            else:
+                self._exposed[name] = (nodes, area[nodes])
+        self.held = np.flatnonzero(held)
+        self.free = ~held
+        pattern = body.pattern
+        self._open = (~held[pattern.rows] & ~held[pattern.columns]).astype(float) if held.any() else None
+        self._reach = self._stored_span(span)
+        self._kelvins = max(span[1] - span[0], 1e-3)
+
+    def _stored_span(self, span: tuple[float, float]) -> Array:
+        """Heat that each node gives up over the span of temperatures [J]."""
+        low, high = span[0], max(span[1], span[0] + 1e-3)
+        reach = np.zeros(self.body.size)
+        for part in self.body.parts:
+            H = part.curve.enthalpy(np.array([low, high]))
+            reach[part.nodes] += part.volume * (H[1] - H[0])
+        return reach
+
+    # What the march asks for.
+
+    def impose(self, time: float, u: Array) -> Array:
+        """Return `u` with the nodes of fixed temperature set to what holds at `time` [s]."""
+        if not self._fixed:
+            return u
+        u = u.copy()
+        for name, nodes in self._fixed.items():
+            exchange = self.exchanges[name]
+            assert isinstance(exchange, Fixed)
+            T = np.full(len(nodes), exchange.surface_temperature(time - self.began))
+            u[nodes] = self.body.enthalpy_at(T, nodes)
+        return u
+
+    def look(self, time: float, u: Array) -> Look:
+        """Return what follows from the host enthalpies `u` [J/m3] at `time` [s]."""
+        state = self.body.state(u)
+        stored, slope = self.body.stored(u, state)
+        rate = self.body.conduction(state)
+        exchange_slope = np.zeros(self.body.size)
+        passed = np.zeros(len(self.surfaces))
+        for i, name in enumerate(self.surfaces):
+            if name not in self._exposed:
+                continue
+            nodes, area = self._exposed[name]
+            flux, flux_slope = self.exchanges[name].flux(state.temperature[nodes], time - self.began)
+            load = area * flux
+            passed[i] = load.sum()
+            rate[nodes] -= load
+            exchange_slope[nodes] += area * flux_slope
+        for i, name in enumerate(self.surfaces):
+            if name in self._fixed:
+                passed[i] = rate[self._fixed[name]].sum()
+        return Look(u, stored, rate, passed, state, slope, exchange_slope)
+
+    def correct(self, look: Look, g: float, residual: Array) -> Array:
+        """Return the Newton correction of `u` for ``stored - g rate = ...`` with its residual [J].
+
+        The matrix is solved for the Kirchhoff integral, the enthalpy is what is updated: across
+        the latent heat dH/dT changes several hundred-fold, and an update of T hops over it.
+        """
+        body = self.body
+        scale = body.scale(look.state)
+        data = g * body.stiffness(look.state, scale)
+        diagonal = (look.slope + g * look.exchange_slope) / scale
+        if self._open is not None:
+            data *= self._open
+            diagonal = np.where(self.free, diagonal, 1.0)
+            residual = np.where(self.free, residual, 0.0)
+        data[body.pattern.diagonal] += diagonal
+        v = body.factor.solve(data, -residual)
+        return np.asarray(look.state.capacity / scale * v)
+
+    def settle(self, stored: Array, look: Look) -> Array:
+        """Return the `u` at which each node holds exactly `stored` [J], near a look.
+
+        One division where a node holds one material; on interfaces a few scalar iterations.
+        """
+        u = look.u + np.where(self.free, (stored - look.stored) / look.stored_slope, 0.0)
+        if self.body.single:
+            return u
+        for part in self.body.parts:
+            if not len(part.guest):
+                continue
+            for _ in range(20):
+                state = self.body.state(u)
+                held, slope = self.body.stored(u, state)
+                gap = np.where(self.free, stored - held, 0.0)[part.guest]
+                u[part.guest] += gap * (state.capacity / slope)[part.guest]
+                if np.all(np.abs(gap) <= 1e-14 * self._reach[part.guest]):
+                    break
+        return u
+
+    def mean_size(self, energy: Array) -> float:
+        """Return the root mean square of an energy error, as a share of what each node gives up."""
+        share = np.where(self.free, energy / self._reach, 0.0)
+        return float(np.sqrt((self._reach @ (share * share)) / self._reach.sum()))
+
+    def worst_size(self, energy: Array, look: Look) -> float:
+        """Return the largest energy error of a node as a temperature, as a share of the run's span."""
+        return float(np.max(np.abs(np.where(self.free, energy / look.slope, 0.0)))) / self._kelvins
+
+    def fastest(self, rate: Array) -> float:
+        """Return the largest share of what a node gives up that it gives up per second [1/s]."""
+        return float(np.max(np.abs(np.where(self.free, rate / self._reach, 0.0))))
+
+    def smooth_size(self, energy: Array, before: Look, after: Look) -> float:
+        """Return the root mean square of an error as temperature, as a share of the run's span.
+
+        Nodes whose capacity changes by half or more in the step cross latent heat: there the
+        energy says how good the step is, and a temperature says nothing.
+        """
+        ratio = after.state.capacity / before.state.capacity
+        smooth = self.free & (ratio > 0.67) & (ratio < 1.5)
+        if not smooth.any():
+            return 0.0
+        T = energy[smooth] / (after.slope[smooth] * self._kelvins)
+        weight = self._reach[smooth]
+        return float(np.sqrt((weight @ (T * T)) / self._reach.sum()))
+
+    def held_heat(self, stored: Array) -> Array:
+        """Return the heat held by the nodes of each fixed surface [J], 0 for other surfaces."""
+        out = np.zeros(len(self.surfaces))
+        for i, name in enumerate(self.surfaces):
+            if name in self._fixed:
+                out[i] = stored[self._fixed[name]].sum()
+        return out

@@ -1,0 +1,1 @@
+"""The march in time, which knows nothing of heat, files or probes."""

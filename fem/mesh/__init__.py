@@ -1,0 +1,1 @@
+"""Shapes, meshes and the names of their parts."""

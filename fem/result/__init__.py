@@ -1,0 +1,1 @@
+"""The run folder and everything that works from it alone."""

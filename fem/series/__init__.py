@@ -1,0 +1,1 @@
+"""Many runs: all through overrides and `run`."""

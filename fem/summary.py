@@ -1,0 +1,179 @@
+"""``summary.json`` while a run goes on: what it will say, kept up to date."""
+
+from __future__ import annotations
+
+import logging
+import platform
+import time as clock
+from importlib.metadata import version
+from typing import Any
+
+from fem.case.case import Case, Stage
+from fem.heat.body import Body
+from fem.march.march import Effort, Step
+from fem.mesh.domain import Array
+from fem.result.folder import Result, RunFolder, Table
+from fem.watch.arrival import Arrival
+from fem.watch.ledger import imbalance
+from fem.watch.record import Record, Rows
+
+log = logging.getLogger("fem.run")
+SECONDS_BETWEEN = 0.5
+
+
+class Summary:
+    """Gathers what a run finds and writes it to the run folder, where there is one.
+
+    Parameters
+    ----------
+    case
+        As read.
+    body, start
+        The meshed piece and its enthalpies at the start [J/m3].
+    record
+        The observers.
+    out
+        The folder; None to write nothing.
+    started
+        Reading of the process's clock when the run began [s].
+    cautions
+        Sentences known before the first step.
+
+    """
+
+    def __init__(
+        self,
+        case: Case,
+        body: Body,
+        start: Array,
+        record: Record,
+        out: RunFolder | None,
+        started: float,
+        cautions: list[str],
+    ):
+        self.case, self.body, self.record, self.out = case, body, record, out
+        self.effort = Effort()
+        self.cautions = list(cautions)
+        self.stages: list[dict[str, Any]] = []
+        self.curves = out.curves if out else Table()
+        self.fronts = out.fronts if out else Table()
+        self._started, self._marched, self._written = started, clock.perf_counter(), 0.0
+        self._heat = body.heat(start)
+        self._u = start
+        self._time = 0.0
+        self._left: tuple[Array, Array] | None = None
+        self._state: dict[str, Any] = {
+            "outcome": "running",
+            "why": "unfinished: still running, or it was killed",
+        }
+        self.arrival: Arrival | None = None
+        if (aim := case.aim) is not None:
+            self.arrival = Arrival(lambda u: record.measure(u, aim.at), aim.reach, record.product.cooling)
+            if self.arrival.lag(start) <= 0.0:
+                self.arrival.time = 0.0
+        self._write()
+
+    def add(self, rows: Rows) -> None:
+        """Take a row of the curves and one of the fronts."""
+        self.curves.add(rows.curves)
+        self.fronts.add(rows.fronts)
+
+    def progress(self, step: Step) -> None:
+        """Take note of an accepted step."""
+        if self.arrival is not None:
+            self.arrival.see(step)
+        self._u, self._time = step.after.u, step.after.time
+        self._left = (step.after.u, step.after.carried)
+        log.debug("t = %.6g s, step %.4g s, %s", step.after.time, step.size, self.effort)
+        if clock.perf_counter() - self._written > SECONDS_BETWEEN:
+            self._write()
+
+    def end_stage(self, stage: Stage, time: float, u: Array, why: str, met: bool) -> None:
+        """Take note of the end of a stage."""
+        product = self.record.product
+        T = self.body.temperature(u)
+        ice = product.mean_ice(product.ice(T))
+        self.stages.append(
+            {
+                "name": stage.name,
+                "ended_s": time,
+                "why": why,
+                "slowest_degC": product.slowest(T)[1],
+                "mean_degC": product.mean(u),
+                "ice": None if ice != ice else ice,
+            }
+        )
+        if stage.until is not None and not met:
+            self.cautions.append(f"stage {stage.name} ended because {why}")
+        log.info("stage %s ended at %.6g s: %s", stage.name, time, why)
+        self._write()
+
+    def end(self, outcome: str, why: str) -> None:
+        """Write the last word."""
+        self._state = {"outcome": outcome, "why": why}
+        log.info("%s: %s", outcome, why)
+        self._write()
+
+    def result(self) -> Result:
+        """Return all of it."""
+        return Result(
+            self.as_dict(), self.curves.columns(), self.fronts.columns(), self.out.path if self.out else None
+        )
+
+    def as_dict(self) -> dict[str, Any]:
+        """Return the content of ``summary.json``."""
+        product = self.record.product
+        T = self.body.temperature(self._u)
+        node, slowest = product.slowest(T)
+        now = self.body.heat(self._u)
+        given = {region: self._heat[region] - now[region] for region in now}
+        left = self.record.ledger.left_at(*self._left) if self._left else 0.0
+        return {
+            "title": self.case.title,
+            **self._state,
+            "aim": self._aim(),
+            "slowest": {
+                "at_m": [float(x) for x in self.body.domain.points[:, node]],
+                "temperature_degC": slowest,
+            },
+            "heat_removed_J": left,
+            "heat_J": given,
+            "energy_imbalance": imbalance(left, sum(given.values()), self.record.ledger.moved),
+            "mass_kg": self.body.masses(),
+            "time_s": self._time,
+            "stages": self.stages,
+            "effort": self._effort(),
+            "cautions": self.cautions,
+            "versions": versions(),
+        }
+
+    def _aim(self) -> dict[str, Any] | None:
+        aim = self.case.aim
+        if aim is None or self.arrival is None:
+            return None
+        time = self.arrival.time
+        met = time is not None and (aim.within is None or time <= aim.within)
+        return {"at": aim.at, "reach_degC": aim.reach, "met": met, "time_s": time, "within_s": aim.within}
+
+    def _effort(self) -> dict[str, Any]:
+        now = clock.perf_counter()
+        return {
+            "nodes": self.body.size,
+            "steps": self.effort.steps,
+            "rejected": self.effort.rejected,
+            "newton": self.effort.newton,
+            "factorisations": self.effort.factorisations,
+            "march_s": round(now - self._marched, 4),
+            "elapsed_s": round(now - self._started, 4),
+        }
+
+    def _write(self) -> None:
+        self._written = clock.perf_counter()
+        if self.out is not None:
+            self.out.summarise(self.as_dict())
+
+
+def versions() -> dict[str, str]:
+    """Return the versions of what computed the result."""
+    names = ("rimefront", "numpy", "scipy", "scikit-fem")
+    return {"python": platform.python_version(), **{name: version(name) for name in names}}

@@ -1,0 +1,1 @@
+"""Observers: look at a state, return numbers, open no file."""
