@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import math
 import re
+import tokenize
 from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cache
@@ -105,9 +106,10 @@ def read_quantity(raw: Any, kind: Kind) -> float:
         )
         raise _wrong(f'"{raw}" cannot be read as a {kind.name}; {remedy}')
     number, unit = float(match[1]), match[2].strip()
-    if not math.isfinite(number):
+    value = convert(number, unit, kind) if math.isfinite(number) else number
+    if not math.isfinite(value):
         raise _wrong(f'"{raw}" is not a finite number')
-    return convert(number, unit, kind)
+    return value
 
 
 def convert(number: float, unit: str, kind: Kind) -> float:
@@ -163,11 +165,14 @@ def _unit(text: str) -> pint.Unit | None:
     spelled = re.sub(r"\bdeg([CF])\b", r"delta_deg\1", spelled)
     if spelled == "1":
         spelled = "dimensionless"
-    if not re.fullmatch(r"[\w%*/().\s-]+", spelled):
+    # A power of a number, or a number of two digits, is no unit and could take for ever to work out.
+    if not re.fullmatch(r"[\w%*/().\s-]+", spelled) or re.search(r"\d[\d.]|[\d)]\s*\*\*", spelled):
         return None
     try:
         return _registry().parse_units(spelled)
-    except (pint.errors.PintError, ValueError, TypeError, AttributeError, KeyError):
+    except (pint.errors.PintError, tokenize.TokenError, ValueError, TypeError, AttributeError, KeyError):
+        return None
+    except (AssertionError, ArithmeticError):  # what the parser makes of "m/" and of "m/0"
         return None
 
 

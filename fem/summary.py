@@ -115,9 +115,9 @@ class Summary:
         self._write()
 
     def result(self) -> Result:
-        """Return all of it."""
+        """Return what was last written, and every row."""
         return Result(
-            self.as_dict(), self.curves.columns(), self.fronts.columns(), self.out.path if self.out else None
+            self._last, self.curves.columns(), self.fronts.columns(), self.out.path if self.out else None
         )
 
     def as_dict(self) -> dict[str, Any]:
@@ -169,8 +169,9 @@ class Summary:
 
     def _write(self) -> None:
         self._written = clock.perf_counter()
+        self._last = self.as_dict()
         if self.out is not None:
-            self.out.summarise(self.as_dict())
+            self.out.summarise(self._last)
 
 
 def versions() -> dict[str, str]:

@@ -44,7 +44,9 @@ def test_columns_are_linear_between_and_held_beyond() -> None:
     assert not bath.constant
     np.testing.assert_allclose(bath.times, [0.0, 60.0, 180.0])
     np.testing.assert_allclose(bath.values, [0.0, -10.0, 10.0], atol=1e-12)
-    assert [bath.at(clock) for clock in (-5.0, 30.0, 60.0, 120.0, 500.0)] == pytest.approx([0, -5, -10, 0, 10])
+    assert [bath.at(clock) for clock in (-5.0, 30.0, 60.0, 120.0, 500.0)] == pytest.approx(
+        [0, -5, -10, 0, 10]
+    )
     np.testing.assert_array_equal(bath.knots, bath.times)
     assert (bath.least, bath.most) == pytest.approx((-10.0, 10.0))
 
@@ -69,7 +71,10 @@ def test_a_log_is_a_column_of_a_file(tmp_path: Path) -> None:
     [
         ("-22", "has no unit"),
         (-22, "bare number"),
-        ({**COLUMNS, "time": {"unit": "s", "values": [0, 2, 2]}}, "row 3 (2 s) does not come after row 2 (2 s)"),
+        (
+            {**COLUMNS, "time": {"unit": "s", "values": [0, 2, 2]}},
+            "row 3 (2 s) does not come after row 2 (2 s)",
+        ),
         ({**COLUMNS, "time": {"unit": "s", "values": [0, 2]}}, "time has 2 rows and value has 3"),
         ({**COLUMNS, "time": {"unit": "s", "values": []}}, "no values"),
         ({**COLUMNS, "time": {"unit": "s", "values": [0, float("nan"), 3]}}, "row 2"),
@@ -89,7 +94,12 @@ def test_what_cannot_be_a_signal_is_said(raw: Any, words: str) -> None:
 
 @pytest.mark.parametrize(
     ("times", "values", "words"),
-    [([], [], "no rows"), ([0.0], [1.0, 2.0], "rows"), ([0.0, 0.0], [1.0, 2.0], "rise"), ([0.0], [np.inf], "finite")],
+    [
+        ([], [], "no rows"),
+        ([0.0], [1.0, 2.0], "rows"),
+        ([0.0, 0.0], [1.0, 2.0], "rise"),
+        ([0.0], [np.inf], "finite"),
+    ],
 )
 def test_a_signal_made_in_code_is_checked_too(times: list[float], values: list[float], words: str) -> None:
     with pytest.raises(ValueError, match=words):

@@ -55,9 +55,7 @@ def load(path: str | Path, overrides: Sequence[str] = ()) -> Case:
     return loads(text, source, Path(path).parent, overrides)
 
 
-def loads(
-    text: str, source: str = "<text>", folder: Path = Path(), overrides: Sequence[str] = ()
-) -> Case:
+def loads(text: str, source: str = "<text>", folder: Path = Path(), overrides: Sequence[str] = ()) -> Case:
     """Read a case from its text.
 
     Parameters
@@ -224,9 +222,7 @@ def _stage(raw: Any, path: KeyPath, folder: Path, found: list[Note]) -> Stage | 
     return _table(Stage, {**raw, "surfaces": readable}, path, folder, found)
 
 
-def _section(
-    model: type[Model], parts: Parts, key: str, folder: Path, found: list[Note]
-) -> Model | None:
+def _section(model: type[Model], parts: Parts, key: str, folder: Path, found: list[Note]) -> Model | None:
     return _table(model, parts.tree[key], (key,), folder, found) if key in parts.tree else None
 
 
@@ -240,9 +236,7 @@ def _entries(tree: dict[str, Any], key: str, found: list[Note]) -> dict[str, Any
     return raw
 
 
-def _kind(
-    kinds: dict[str, Any], word: str, raw: Any, path: KeyPath, folder: Path, found: list[Note]
-) -> Any:
+def _kind(kinds: dict[str, Any], word: str, raw: Any, path: KeyPath, folder: Path, found: list[Note]) -> Any:
     """Read a table as the kind that one of its keys names."""
     if not isinstance(raw, dict):
         found.append(Note(path, f"is a table with {word} = ..., got {shown(raw)}"))

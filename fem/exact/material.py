@@ -211,9 +211,9 @@ def rows_of(steps: tuple[Step, ...], low: float, high: float, width: float) -> R
         H.append(H[-1] + step.capacity * (top - T[-2]))
         k.append(step.conductivity)
         if following is not None:
-            # The sliver's own sensible heat is that of the warmer zone: it joins its line exactly.
+            # With the colder zone's own heat in the jump, H is exact everywhere outside it.
             T.append(step.end)
-            H.append(H[-1] + step.latent + following.capacity * width)
+            H.append(H[-1] + step.latent + step.capacity * width)
             k.append(following.conductivity)
     liquid_at_0 = H[-1] - steps[-1].capacity * high
     return Rows(np.array(T), np.array(H) - liquid_at_0, np.array(k))

@@ -166,7 +166,7 @@ def _closing(mu: Array, length: float, slip: Array) -> Array:
 
 def _cosines(biot: float) -> tuple[Array, Array]:
     """Roots of mu tan mu = Bi, and the weights of the cosines whose sum is 1."""
-    n = np.arange(_TERMS)
+    n: Array = np.arange(_TERMS, dtype=float)
     if np.isinf(biot):
         mu = (n + 0.5) * pi
     else:

@@ -80,6 +80,7 @@ class Body:
         self.parts = self._parts(entries)
         self.single = len(self.parts) == 1
         self.exposures = {name: forms.exposure(domain, name) for name in domain.surfaces}
+        self.edges = {name: domain.edge_areas(name) for name in domain.surfaces}
         self._leader = self._nearest_product()
         self._factor: Factor | None = None
 

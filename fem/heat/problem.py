@@ -81,7 +81,7 @@ class HeatProblem:
                 self._fixed[name] = nodes[~held[nodes]]
                 held[nodes] = True
             else:
-                self._exposed[name] = (nodes, area[nodes])
+                self._exposed[name] = (nodes, area[nodes], body.edges[name][nodes])
         self.held = np.flatnonzero(held)
         self.free = ~held
         pattern = body.pattern
@@ -122,11 +122,10 @@ class HeatProblem:
         for i, name in enumerate(self.surfaces):
             if name not in self._exposed:
                 continue
-            nodes, area = self._exposed[name]
+            nodes, area, edge_area = self._exposed[name]
             flux, flux_slope = self.exchanges[name].flux(state.temperature[nodes], time - self.began)
-            load = area * flux
-            passed[i] = load.sum()
-            rate[nodes] -= load
+            rate[nodes] -= area * flux
+            passed[i] = edge_area @ flux
             exchange_slope[nodes] += area * flux_slope
         for i, name in enumerate(self.surfaces):
             if name in self._fixed:

@@ -19,6 +19,10 @@ from fem.march.problem import Problem
 from fem.march.step import Moment, Step, begin
 
 
+SMALLEST = 1e-9
+"""No step is shorter than this share of the time that has passed, or of a second."""
+
+
 def march(
     problem: Problem,
     start: Moment,
@@ -92,6 +96,8 @@ def _accepted(
     last_error = ""
     for _ in range(control.most_tries):
         result = _attempt(problem, history, size, landing, control, effort)
+        if size < SMALLEST * max(began, 1.0):
+            break
         if result is None:
             size, landing = 0.3 * size, None
             last_error = "the iteration of a step did not converge"
@@ -105,8 +111,6 @@ def _accepted(
         effort.rejected += 1
         size, landing = size * min(max(factor, 0.2), 0.7), None
         last_error = f"the error of a step stayed {error / control.tolerance:.3g} times its bound"
-        if size < 1e-9 * max(began, 1.0):
-            break
     raise RunFailure(
         why=f"{last_error}, down to steps of {size:.3g} s",
         time=began,

@@ -33,6 +33,11 @@ def _read_cell(raw: Any) -> tuple[float, float]:
     return size, size
 
 
+def _read_length_unit(raw: Any) -> float:
+    """Read a unit, such as "mm", or a length that stands for one, such as "1 mm"."""
+    return CELL.read(f"1 {raw}" if isinstance(raw, str) and raw[:1].isalpha() else raw)
+
+
 Cell = Annotated[tuple[float, float], PlainValidator(_read_cell)]
 
 
@@ -257,7 +262,12 @@ class Bar(Form):
     @property
     def outer_corner(self) -> float:
         """Radius of the outer corners of the wall [m]; a sharp corner stays sharp outside."""
-        return self.corner + (self.wall or 0.0) if self.corner else 0.0
+        return 0.0 if self.sharp else self.corner + (self.wall or 0.0)
+
+    @property
+    def sharp(self) -> bool:
+        """Whether the corners cannot be told from sharp ones: below a millionth of the bar."""
+        return self.corner <= 1e-6 * self.smallest
 
     def surfaces(self) -> tuple[str, ...]:
         """Return the names of the surfaces."""
@@ -303,7 +313,7 @@ class MeshShape(BaseModel):
 
     form: Literal["mesh"] = "mesh"
     file: Annotated[str, Field(min_length=1)]
-    length_unit: Annotated[float, Kind("length", "m", "mm", above=0.0)]
+    length_unit: Annotated[float, PlainValidator(_read_length_unit)]
 
     def surfaces(self) -> None:
         """Return None: known once the file has been read."""

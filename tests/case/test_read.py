@@ -9,7 +9,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from fem.case.case import Case, Until
+from fem.case.case import Until
 from fem.case.read import load, loads
 from fem.errors import CaseError
 from fem.heat.exchange import Fluid, Radiant
@@ -112,7 +112,9 @@ def edited(text: str, *changes: tuple[str, str]) -> str:
     return text
 
 
-def problems(text: str, overrides: tuple[str, ...] = (), folder: Path = Path()) -> list[tuple[str, str, int | None]]:
+def problems(
+    text: str, overrides: tuple[str, ...] = (), folder: Path = Path()
+) -> list[tuple[str, str, int | None]]:
     with pytest.raises(CaseError) as caught:
         loads(text, "pop.toml", folder, overrides)
     return [(p.place, p.message, p.line) for p in caught.value.problems]
@@ -125,7 +127,9 @@ def test_the_example_of_the_case_language_reads_in_si() -> None:
     assert case.piece.start_of("wall") == 4.0
     shape = case.shape
     assert isinstance(shape, Bar)
-    assert (shape.thickness, shape.width, shape.corner, shape.wall) == pytest.approx((0.022, 0.05, 0.006, 0.0008))
+    assert (shape.thickness, shape.width, shape.corner, shape.wall) == pytest.approx(
+        (0.022, 0.05, 0.006, 0.0008)
+    )
     assert shape.cells() == pytest.approx((0.0008, 0.0008))
     assert case.regions == {"product": "mix", "wall": "stainless"}
     assert case.materials["mix"].density == 1075.0
@@ -167,27 +171,53 @@ def test_start_temperatures_by_region() -> None:
 # What is changed in BAR (pattern, replacement); the key at fault; words of the message.
 BAD_BAR = {
     "unknown section": (r"^\[stepping\]", "[steping]", "steping", ["steping", 'did you mean "stepping"?']),
-    "unknown key": ("^thickness", "thicknes", "shape.thicknes", ['no key "thicknes"', 'did you mean "thickness"?']),
+    "unknown key": (
+        "^thickness",
+        "thicknes",
+        "shape.thicknes",
+        ['no key "thicknes"', 'did you mean "thickness"?'],
+    ),
     "missing key": ("^thickness.*", "", "shape.thickness", ["is missing", 'thickness = "22 mm"']),
     "unknown form": ('form      = "bar"', 'form = "bra"', "shape.form", ["rod", 'did you mean "bar"?']),
     "unknown exchange": ('"fluid"', '"fluids"', "stages.freeze.surfaces.outside.exchange", ['mean "fluid"?']),
     "exchange missing": (
-        "^exchange.*", "", "stages.freeze.surfaces.outside.exchange", ["is missing", '"radiant"'],
+        "^exchange.*",
+        "",
+        "stages.freeze.surfaces.outside.exchange",
+        ["is missing", '"radiant"'],
     ),
     "unknown kind": ('"recipe"', '"receipt"', "materials.mix.kind", ['did you mean "recipe"?']),
     "kind not text": ('"recipe"', "3", "materials.mix.kind", ["must be one of", "got 3"]),
-    "unknown accuracy": ('"standard"', '"standart"', "stepping.accuracy", ["quick", 'did you mean "standard"?']),
+    "unknown accuracy": (
+        '"standard"',
+        '"standart"',
+        "stepping.accuracy",
+        ["quick", 'did you mean "standard"?'],
+    ),
     "missing unit": ('"22 mm"', '"22"', "shape.thickness", ["has no unit", '"22 mm"']),
     "wrong unit": ('"22 mm"', '"22 kg"', "shape.thickness", ['"kg" is no unit of length']),
     "unknown unit": ('"22 mm"', '"22 furlog"', "shape.thickness", ["furlog"]),
     "bare number": ('"22 mm"', "22", "shape.thickness", ["bare number (22)", '"22 mm"']),
     "a bare h": ('"250 W/m2/K"', "250", "stages.freeze.surfaces.outside.h", ["bare number (250)", "W/m2/K"]),
     "a decimal comma": ('"0.8 mm"', '"0,8 mm"', "shape.wall", ["0,8 mm", "decimal sign as a point"]),
-    "a difference for a temperature": ('"-22 degC"', '"-22 delta_degC"', "stages.freeze.surfaces.outside.coolant", []),
-    "below absolute zero": (
-        '"-22 degC"', '"-300 degC"', "stages.freeze.surfaces.outside.coolant", ["at least -273.1", "got -300 degC"],
+    "a difference for a temperature": (
+        '"-22 degC"',
+        '"-22 delta_degC"',
+        "stages.freeze.surfaces.outside.coolant",
+        [],
     ),
-    "negative h": ('"250 W/m2/K"', '"-35 W/m2/K"', "stages.freeze.surfaces.outside.h", ["above 0", "-35 W/m2/K"]),
+    "below absolute zero": (
+        '"-22 degC"',
+        '"-300 degC"',
+        "stages.freeze.surfaces.outside.coolant",
+        ["at least -273.1", "got -300 degC"],
+    ),
+    "negative h": (
+        '"250 W/m2/K"',
+        '"-35 W/m2/K"',
+        "stages.freeze.surfaces.outside.h",
+        ["above 0", "-35 W/m2/K"],
+    ),
     "Brix as a fraction": ('"18 %"', "0.18", "materials.mix.sucrose", ["bare number (0.18)", '"18 %"']),
     "Brix beyond all": ('"18 %"', '"180 %"', "materials.mix.sucrose", ["at most 100 %", "180 %"]),
     "Brix bare beyond all": ('"18 %"', "180", "materials.mix.sucrose", ["bare number (180)"]),
@@ -197,19 +227,42 @@ BAD_BAR = {
     "infinity as text": ('"40 min"', '"inf min"', "stages.freeze.lasts", ["not a finite number"]),
     "a date": ('"22 mm"', "2024-01-01", "shape.thickness", ["must be a length with its unit"]),
     "unknown surface": (
-        "surfaces.outside", "surfaces.outsid", "stages.freeze.surfaces.outsid",
+        "surfaces.outside",
+        "surfaces.outsid",
+        "stages.freeze.surfaces.outsid",
         ['no surface "outsid" (there is: outside)', 'did you mean "outside"?'],
     ),
     "unknown region": ("^wall    = ", "wal = ", "regions.wal", ['no region "wal"', 'did you mean "wall"?']),
     "region without material": ("^wall    = .*", "", "regions", ['region "wall" has no material']),
-    "unknown material": ('product = "mix"', 'product = "mx"', "regions.product", ['no material "mx"', '"mix"?']),
-    "material not text": ('product = "mix"', "product = 3", "regions.product", ["name of a material", "got 3"]),
-    "start of no region": (
-        r"^\[shape\]", '[piece.start]\nwal = "3 degC"\n[shape]', "piece.start.wal", ['did you mean "wall"?'],
+    "unknown material": (
+        'product = "mix"',
+        'product = "mx"',
+        "regions.product",
+        ['no material "mx"', '"mix"?'],
     ),
-    "no start temperature": (r"^start_temp.*", "", "piece.start_temperature", ["is missing", "product, wall"]),
+    "material not text": (
+        'product = "mix"',
+        "product = 3",
+        "regions.product",
+        ["name of a material", "got 3"],
+    ),
+    "start of no region": (
+        r"^\[shape\]",
+        '[piece.start]\nwal = "3 degC"\n[shape]',
+        "piece.start.wal",
+        ['did you mean "wall"?'],
+    ),
+    "no start temperature": (
+        r"^start_temp.*",
+        "",
+        "piece.start_temperature",
+        ["is missing", "product, wall"],
+    ),
     "corner beyond half": (
-        '"6 mm"', '"12 mm"', "shape.corner", ["half of the thickness (22 mm / 2 = 11 mm)", "got 12 mm"],
+        '"6 mm"',
+        '"12 mm"',
+        "shape.corner",
+        ["half of the thickness (22 mm / 2 = 11 mm)", "got 12 mm"],
     ),
     "no wall": ('"0.8 mm"\ncell', '"0 mm"\ncell', "shape.wall", ["above 0", "0 mm"]),
     "cell too large": ('cell      = "0.8 mm"', 'cell = "60 mm"', "shape.cell", ["23.6 mm", "got 60 mm"]),
@@ -219,18 +272,43 @@ BAD_BAR = {
     "wrong section": ('"plane"  ', '"axisymmetric"', "piece.length", ["leave it out"]),
     "stage without time": ("^lasts.*", "", "stages.freeze.lasts", ["is missing", 'lasts = "20 min"']),
     "until unreadable": ("slowest <= ", "slowest < ", "stages.freeze.until", ['"slowest <= -12 degC"']),
-    "until of no point": ("slowest <= ", "core <= ", "stages.freeze.until", ['no watched point "core"', "centre"]),
+    "until of no point": (
+        "slowest <= ",
+        "core <= ",
+        "stages.freeze.until",
+        ['no watched point "core"', "centre"],
+    ),
     "until without unit": ("<= -12 degC", "<= -12", "stages.freeze.until", ["has no unit"]),
-    "rows beyond the run": ('"5 s"', '"50 min"', "watch.every", ["50 min is longer than the whole run (40 min)"]),
-    "frames beyond the run": ('"60 s"', '"1 h"', "watch.frames", ["1 h is longer than the whole run (40 min)"]),
+    "rows beyond the run": (
+        '"5 s"',
+        '"50 min"',
+        "watch.every",
+        ["50 min is longer than the whole run (40 min)"],
+    ),
+    "frames beyond the run": (
+        '"60 s"',
+        '"1 h"',
+        "watch.frames",
+        ["1 h is longer than the whole run (40 min)"],
+    ),
     "front unreadable": ('"freezing point"', '"icy"', "watch.front", ['"ice 0.3"', 'got "icy"']),
     "front of too much ice": ('"freezing point"', '"ice 30"', "watch.front", ["between 0 and 1"]),
-    "point outside": (r'centre = \["0 mm"', 'centre = ["30 mm"', "watch.points.centre", ["(30, 0) mm", "outside"]),
+    "point outside": (
+        r'centre = \["0 mm"',
+        'centre = ["30 mm"',
+        "watch.points.centre",
+        ["(30, 0) mm", "outside"],
+    ),
     "point of one number": (r'centre = \["0 mm", ', "centre = [", "watch.points.centre", ["two lengths"]),
     "point name": ("^centre", '"a b"', 'watch.points."a b"', ["letters, digits"]),
     "point called slowest": ("^centre", "slowest", "watch.points.slowest", ["another name"]),
     "ray of no length": (r'"11 mm", "0 mm"', '"0 mm", "0 mm"', "watch.rays.flat.to", ["same point"]),
-    "ray outside": (r'"11 mm", "0 mm"', '"11 mm", "26 mm"', "watch.rays.flat.from", ["(11, 26) mm", "outside"]),
+    "ray outside": (
+        r'"11 mm", "0 mm"',
+        '"11 mm", "26 mm"',
+        "watch.rays.flat.from",
+        ["(11, 26) mm", "outside"],
+    ),
     "ray key": ("to = ", "too = ", "watch.rays.flat.too", ['did you mean "to"?']),
     "aim at no point": ('at     = "slowest"', 'at = "centr"', "aim.at", ['did you mean "centre"?']),
     "aim beyond the run": ('"20 min"', '"2 h"', "aim.within", ["2 h", "all stages together (40 min)"]),
@@ -239,7 +317,12 @@ BAD_BAR = {
     "newer schema": ("^schema = 1", "schema = 2", "schema", ["newer than this program", "schema = 1"]),
     "schema not a number": ("^schema = 1", 'schema = "one"', "schema", ["must be 1", '"one"']),
     "schema missing": ("^schema = 1", "", "schema", ["is missing", "schema = 1"]),
-    "ring of layers": ('"250 W/m2/K"', "{ time = 3 }", "stages.freeze.surfaces.outside.h", ["value is missing"]),
+    "ring of layers": (
+        '"250 W/m2/K"',
+        "{ time = 3 }",
+        "stages.freeze.surfaces.outside.h",
+        ["value is missing"],
+    ),
     "time that falls": (
         '"-22 degC"',
         '{ time = { unit = "s", values = [0, 60, 30] }, value = { unit = "degC", values = [1, 2, 3] } }',
@@ -271,7 +354,9 @@ BAD_BAR = {
         ["no.csv"],
     ),
     "h without air": (
-        '"fluid"', '"radiant"\nemissivity = "0.9"\nsurroundings = "-20 degC"', "stages.freeze.surfaces.outside.coolant",
+        '"fluid"',
+        '"radiant"\nemissivity = "0.9"\nsurroundings = "-20 degC"',
+        "stages.freeze.surfaces.outside.coolant",
         ['no key "coolant"', "surroundings"],
     ),
 }
@@ -290,39 +375,67 @@ def test_bad_input_is_said_at_its_key(name: str) -> None:
 BAD_ROD = {
     "falling enthalpy": ("-380, -300", "-300, -380", "materials.mix.enthalpy", ["must rise", "-380 kJ/kg"]),
     "inner beyond outer": (
-        'form = "rod"\nradius = "14 mm"', 'form = "ring"\ninner = "15 mm"\nouter = "14 mm"', "shape.inner",
+        'form = "rod"\nradius = "14 mm"',
+        'form = "ring"\ninner = "15 mm"\nouter = "14 mm"',
+        "shape.inner",
         ["smaller than outer (14 mm)", "got 15 mm"],
     ),
     "section of a rod": (
-        'section = "axisymmetric"', 'section = "plane"\nlength = "1 m"', "piece.section", ['a rod is "axisymmetric"'],
+        'section = "axisymmetric"',
+        'section = "plane"\nlength = "1 m"',
+        "piece.section",
+        ['a rod is "axisymmetric"'],
     ),
-    "surface of a bar": (r"surfaces\.side", "surfaces.outside", "stages.freeze.surfaces.outside", ["side, bottom, top"]),
+    "surface of a bar": (
+        r"surfaces\.side",
+        "surfaces.outside",
+        "stages.freeze.surfaces.outside",
+        ["side, bottom, top"],
+    ),
     "front without freezing point": (
-        r"^\[regions\]", '[watch]\nfront = "freezing point"\n[regions]', "watch.front",
+        r"^\[regions\]",
+        '[watch]\nfront = "freezing point"\n[regions]',
+        "watch.front",
         ['material "mix" has no freezing point', "state its freezing_point"],
     ),
     "front of unknown ice": (
-        r"^\[regions\]", '[watch]\nfront = "ice 0.3"\n[regions]', "watch.front", ["does not say its ice"],
+        r"^\[regions\]",
+        '[watch]\nfront = "ice 0.3"\n[regions]',
+        "watch.front",
+        ["does not say its ice"],
     ),
     "ray without freezing point": (
-        r"^\[regions\]", '[watch.rays]\nr = { from = ["0 mm", "0 mm"], to = ["14 mm", "0 mm"] }\n[regions]',
-        "watch.front", ["no freezing point"],
+        r"^\[regions\]",
+        '[watch.rays]\nr = { from = ["0 mm", "0 mm"], to = ["14 mm", "0 mm"] }\n[regions]',
+        "watch.front",
+        ["no freezing point"],
     ),
     "two stages of one name": (
-        r"^\[\[stages\]\]", '[[stages]]\nname = "freeze"\nlasts = "1 s"\n[[stages]]', "stages[2].name",
+        r"^\[\[stages\]\]",
+        '[[stages]]\nname = "freeze"\nlasts = "1 s"\n[[stages]]',
+        "stages[2].name",
         ["stage 1", '"freeze" too'],
     ),
     "empty stages": (r"(?s)\[\[stages\]\].*", "", "stages", ["is missing"]),
     "a stage that is one table": (r"\[\[stages\]\]", "[stages]", "stages", ["[[stages]]", "got a table"]),
     "value for a table": ("^schema = 1", "schema = 1\nstepping = 3", "stepping", ["is a table, got 3"]),
     "value for an exchange": (
-        r"(?s)\[stages\.surf.*", "surfaces = { side = 3 }", "stages.freeze.surfaces.side", ["exchange", "got 3"],
+        r"(?s)\[stages\.surf.*",
+        "surfaces = { side = 3 }",
+        "stages.freeze.surfaces.side",
+        ["exchange", "got 3"],
     ),
     "value for all surfaces": (
-        r"(?s)\[stages\.surf.*", "surfaces = 3", "stages.freeze.surfaces", ["must be a table, got 3"],
+        r"(?s)\[stages\.surf.*",
+        "surfaces = 3",
+        "stages.freeze.surfaces",
+        ["must be a table, got 3"],
     ),
     "a number no machine holds": (
-        "^schema = 1", "schema = 0x" + "f" * 4000, "schema", ["beyond 64 bits"],
+        "^schema = 1",
+        "schema = 0x" + "f" * 4000,
+        "schema",
+        ["beyond 64 bits"],
     ),
     "nameless stage": ('name = "freeze"', 'name = ""', "stages[1].name", ["must not be empty"]),
 }
@@ -387,7 +500,14 @@ def test_broken_toml_is_said_with_its_line(text: str, line: int | None, words: s
 
 
 def test_an_empty_file_names_what_is_missing() -> None:
-    assert [place for place, _, _ in problems("")] == ["schema", "piece", "shape", "regions", "materials", "stages"]
+    assert [place for place, _, _ in problems("")] == [
+        "schema",
+        "piece",
+        "shape",
+        "regions",
+        "materials",
+        "stages",
+    ]
 
 
 def test_unreadable_files_are_said(tmp_path: Path) -> None:
@@ -408,7 +528,7 @@ def test_a_log_is_read_from_beside_the_case(tmp_path: Path) -> None:
     outside = load(tmp_path / "pop.toml").stages[0].surfaces["outside"]
     assert isinstance(outside, Fluid)
     assert outside.coolant.at(300.0) == pytest.approx(-22.0)
-    (place, message, _), = problems(text.replace('"bath" }', '"bat" }'), folder=tmp_path)
+    ((place, message, _),) = problems(text.replace('"bath" }', '"bat" }'), folder=tmp_path)
     assert place == "stages.freeze.surfaces.outside.coolant"
     assert 'did you mean "bath"?' in message
 
@@ -432,7 +552,21 @@ def test_radiant_takes_air() -> None:
     assert problems(edited(text, ("^air.*", "")))[0][0] == "stages.freeze.surfaces.outside.air"
 
 
-VALUES = ["3", "-1", "nan", '""', '"22 mm"', '"-5 degC"', "[]", "{}", "true", '"\\u0000"', "[[1]]", "1e400", "0x" + "f" * 4000]
+VALUES = [
+    "3",
+    "-1",
+    "nan",
+    '""',
+    '"22 mm"',
+    '"-5 degC"',
+    "[]",
+    "{}",
+    "true",
+    '"\\u0000"',
+    "[[1]]",
+    "1e400",
+    "0x" + "f" * 4000,
+]
 
 
 @st.composite
@@ -462,8 +596,9 @@ def mutations(draw: st.DrawFn) -> str:
 @settings(max_examples=300, deadline=None)
 @given(mutations())
 def test_a_mutilated_case_reads_or_says_why_not(text: str) -> None:
+    said = None
     try:
-        assert isinstance(loads(text), Case)
+        loads(text)
     except CaseError as error:
-        assert error.problems
-        assert len(str(error).splitlines()) == 1 + len(error.problems)
+        said = error
+    assert said is None or len(str(said).splitlines()) == 1 + len(said.problems) > 1

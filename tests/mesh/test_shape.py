@@ -39,7 +39,9 @@ def test_a_sharp_bar_keeps_its_corners() -> None:
 
 
 def test_a_bar_may_be_round() -> None:
-    assert Bar(thickness="20 mm", width="20 mm", corner="10 mm").areas()["product"] == pytest.approx(math.pi * 1e-4)
+    assert Bar(thickness="20 mm", width="20 mm", corner="10 mm").areas()["product"] == pytest.approx(
+        math.pi * 1e-4
+    )
 
 
 def test_volumes_of_revolution() -> None:
@@ -54,7 +56,12 @@ def test_volumes_of_revolution() -> None:
 def test_names_of_surfaces_and_regions() -> None:
     assert Slab(thickness="80 mm", width="2 mm").surfaces() == ("left", "right", "bottom", "top")
     assert Rod(radius="1 cm", height="1 cm").surfaces() == ("side", "bottom", "top")
-    assert Ring(inner="1 cm", outer="2 cm", height="1 cm").surfaces() == ("inside", "outside", "bottom", "top")
+    assert Ring(inner="1 cm", outer="2 cm", height="1 cm").surfaces() == (
+        "inside",
+        "outside",
+        "bottom",
+        "top",
+    )
     assert Bar(**BAR).surfaces() == ("outside",)
     assert Bar(**BAR).regions() == ("product", "wall")
     assert Bar(thickness="22 mm", width="50 mm").regions() == ("product",)
@@ -72,7 +79,11 @@ def test_the_unit_of_a_mesh_file_is_a_word_or_a_length(unit: str) -> None:
 
 def test_sections_and_boxes() -> None:
     assert {name: kind.section for name, kind in SHAPES.items()} == {
-        "bar": "plane", "slab": "plane", "rod": "axisymmetric", "ring": "axisymmetric", "mesh": None,
+        "bar": "plane",
+        "slab": "plane",
+        "rod": "axisymmetric",
+        "ring": "axisymmetric",
+        "mesh": None,
     }
     assert np.allclose(Bar(**BAR).box(), [(-0.0118, -0.0258), (0.0118, 0.0258)])
     assert np.allclose(Rod(radius="14 mm", height="180 mm").box(), [(-0.014, 0.0), (0.014, 0.18)])
@@ -92,15 +103,25 @@ def test_a_cell_is_one_size_or_two_or_chosen() -> None:
         (Bar, {**BAR, "corner": "-1 mm"}, r"at least 0.*got -1 mm"),
         (Bar, {**BAR, "wall": "0 mm"}, r"above 0.*got 0 mm"),
         (Bar, {**BAR, "thickness": "-22 mm"}, r"above 0.*got -22 mm"),
-        (Ring, {"inner": "15 mm", "outer": "15 mm", "height": "1 cm"}, r"smaller than outer \(15 mm\), got 15 mm"),
+        (
+            Ring,
+            {"inner": "15 mm", "outer": "15 mm", "height": "1 cm"},
+            r"smaller than outer \(15 mm\), got 15 mm",
+        ),
         (Rod, {"radius": "14 mm", "height": "180 mm", "cell": "60 mm"}, r"28 mm across.*got 60 mm"),
-        (Rod, {"radius": "14 mm", "height": "180 mm", "cell": ["1 mm", "200 mm"]}, r"180 mm along.*got 200 mm"),
+        (
+            Rod,
+            {"radius": "14 mm", "height": "180 mm", "cell": ["1 mm", "200 mm"]},
+            r"180 mm along.*got 200 mm",
+        ),
         (Slab, {"thickness": "8 cm", "width": "8 cm", "cell": "1 um"}, r"cells; got 0.001 mm"),
         (Slab, {"thickness": "8 cm", "width": "1e-9 mm"}, r"cells"),
         (Slab, {"thickness": "8 cm", "width": "8 cm", "cell": ["1 mm"]}, r"one size or two"),
         (MeshShape, {"file": "a.msh", "length_unit": "kg"}, r"no unit of length|cannot be read"),
     ],
 )
-def test_impossible_dimensions_are_said_with_both_numbers(kind: type, given: dict[str, object], words: str) -> None:
+def test_impossible_dimensions_are_said_with_both_numbers(
+    kind: type, given: dict[str, object], words: str
+) -> None:
     with pytest.raises(ValidationError, match=words):
         kind(**given)

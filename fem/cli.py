@@ -1,0 +1,97 @@
+"""The command line: each command is one call into the library."""
+
+from __future__ import annotations
+
+import os
+import sys
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import click
+
+from fem.errors import CaseError, RunFailure
+
+if TYPE_CHECKING:
+    from fem.case.case import Case
+
+FAILED, WRONG, PART_FAILED, INTERRUPTED = 1, 2, 3, 130
+
+
+def main() -> None:
+    """Run the command line and leave with its exit code."""
+    # Two threads are slower than one on matrices of this size; this has to stand before numpy.
+    for name in ("OPENBLAS_NUM_THREADS", "OMP_NUM_THREADS", "MKL_NUM_THREADS"):
+        os.environ.setdefault(name, "1")
+    try:
+        sys.exit(rimefront.main(standalone_mode=False) or 0)
+    except click.exceptions.Abort:
+        _say("interrupted")
+        sys.exit(INTERRUPTED)
+    except KeyboardInterrupt:
+        _say("interrupted")
+        sys.exit(INTERRUPTED)
+    except click.ClickException as error:
+        error.show()
+        sys.exit(WRONG)
+    except CaseError as error:
+        _say(str(error))
+        sys.exit(WRONG)
+    except RunFailure as error:
+        _say(f"The run failed {error}")
+        sys.exit(FAILED)
+    except OSError as error:
+        _say(f"{error.filename or 'a file'}: {error.strerror or error}; what was already written is kept")
+        sys.exit(FAILED)
+
+
+@click.group(context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100})
+@click.version_option(package_name="rimefront")
+def rimefront() -> None:
+    """How long a moulded water-ice piece takes to freeze, where it is slowest, and what it hangs on."""
+
+
+_CASE = click.argument("case", type=click.Path(path_type=Path))
+_SET = click.option(
+    "--set", "overrides", multiple=True, metavar="KEY=VALUE", help="Change a key, stages by their name."
+)
+
+
+@rimefront.command()
+@_CASE
+@_SET
+@click.option("--into", type=click.Path(path_type=Path), help="Folder to write; by default runs/CASE.")
+@click.option("--overwrite", is_flag=True, help="Replace the run folder given with --into.")
+@click.option("--json", "as_json", is_flag=True, help="Print summary.json; text goes to standard error.")
+def run(case: Path, overrides: tuple[str, ...], into: Path | None, overwrite: bool, as_json: bool) -> None:
+    """Run CASE and say when its slowest point is cold enough."""
+    from fem.case.read import load
+    from fem.result.folder import fresh
+    from fem.run import run as run_case
+    from fem.terminal import Progress, show_answer, show_json
+
+    read: Case = load(case, overrides)
+    folder = into if into is not None else fresh(case.stem)
+    with Progress(read.lasts) as progress:
+        result = run_case(read, folder, overwrite=overwrite, progress=progress)
+    if as_json:
+        show_json(result.summary)
+    show_answer(result, to_stderr=as_json)
+
+
+@rimefront.command()
+@click.option("--json", "as_json", is_flag=True, help="Print the lines as JSON.")
+def verify(as_json: bool) -> None:
+    """Run the solver against exact solutions and print what each says, what ours is, and the error."""
+    from fem.series.verify import verify as verify_all
+    from fem.terminal import show_verdicts
+
+    if not show_verdicts(verify_all(), as_json):
+        raise SystemExit(FAILED)
+
+
+def _say(text: Any) -> None:
+    click.echo(text, err=True)
+
+
+if __name__ == "__main__":
+    main()

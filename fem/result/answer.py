@@ -1,0 +1,91 @@
+"""The answer in plain words, from a summary alone: one sentence first, then what stands behind it."""
+
+from __future__ import annotations
+
+from typing import Any
+
+UNFINISHED = "running"
+
+
+def sentence(summary: dict[str, Any]) -> str:
+    """Return the answer in one sentence.
+
+    Parameters
+    ----------
+    summary
+        As in ``summary.json``.
+
+    """
+    outcome = summary.get("outcome")
+    aim = summary.get("aim")
+    if outcome == UNFINISHED:
+        return f"Unfinished: the run stands at {duration(summary['time_s'])}; it goes on, or it was killed."
+    if outcome != "finished":
+        return f"The run {outcome} at {duration(summary['time_s'])}: {summary['why']}."
+    if aim is None:
+        slowest = summary["slowest"]
+        return f"After {duration(summary['time_s'])} the slowest point is at {slowest['temperature_degC']:.1f} degC."
+    who = "The slowest point" if aim["at"] == "slowest" else f'The point "{aim["at"]}"'
+    reach = f"{aim['reach_degC']:g} degC"
+    if aim["time_s"] is None:
+        last = summary["slowest"]["temperature_degC"]
+        text = f"{who} does not reach {reach} within the {duration(summary['time_s'])} that were run"
+        if aim["at"] == "slowest":
+            text += f": it ends at {last:.1f} degC"
+        return text + (f"; no, {duration(aim['within_s'])} is not enough." if aim["within_s"] else ".")
+    return f"{who} reaches {reach} after {duration(aim['time_s'])}{_verdict(aim)}."
+
+
+def _verdict(aim: dict[str, Any]) -> str:
+    """Say whether the time given is enough, and by how much."""
+    within, time = aim["within_s"], aim["time_s"]
+    if within is None:
+        return ""
+    margin = abs(within - time) / within
+    if aim["met"]:
+        words = "is just enough" if margin < 0.05 else "is enough"
+        return f"; yes, {duration(within)} {words}, {100 * margin:.0f} % to spare"
+    return f"; no, {duration(within)} is not enough, {duration(time - within)} are missing"
+
+
+def details(summary: dict[str, Any]) -> list[tuple[str, str]]:
+    """Return what stands behind the sentence, as pairs of a label and a text."""
+    lines: list[tuple[str, str]] = []
+    slowest = summary.get("slowest")
+    if slowest:
+        x, y = (1e3 * value for value in slowest["at_m"])
+        place = f"({x:.1f}, {y:.1f}) mm, at {slowest['temperature_degC']:.1f} degC when the run ended"
+        lines.append(("slowest point", place))
+    for region, heat in summary.get("heat_J", {}).items():
+        mass = summary["mass_kg"][region]
+        lines.append((f"heat of the {region}", f"{heat / 1e3:.2f} kJ from {1e3 * mass:.1f} g a piece"))
+    for stage in summary.get("stages", []):
+        ice = "" if stage["ice"] is None else f", ice {100 * stage['ice']:.0f} % of the mass"
+        text = (
+            f"ended after {duration(stage['ended_s'])}, {stage['why']}; slowest {stage['slowest_degC']:.1f}, "
+            f"once equalised {stage['mean_degC']:.1f} degC{ice}"
+        )
+        lines.append((f"stage {stage['name']}", text))
+    if "energy_imbalance" in summary:
+        text = f"heat through the surfaces and heat given up agree to {abs(summary['energy_imbalance']):.0e} of it"
+        lines.append(("ledger", text))
+    effort = summary.get("effort")
+    if effort:
+        text = f"{effort['nodes']} nodes, {effort['steps']} steps, {effort['factorisations']} factorisations"
+        lines.append(("effort", f"{text}, {effort['elapsed_s']:.1f} s"))
+    lines += [("caution", caution) for caution in summary.get("cautions", [])]
+    return lines
+
+
+def duration(seconds: float) -> str:
+    """Return a time as the trade says it: seconds, minutes or hours, to three figures.
+
+    >>> duration(43.2), duration(1161.2), duration(19440)
+    ('43.2 s', '19.4 min', '5.40 h')
+    """
+    if seconds < 120.0:
+        return f"{seconds:.3g} s"
+    if seconds < 7200.0:
+        minutes = seconds / 60.0
+        return f"{minutes:.0f} min" if abs(minutes - round(minutes)) < 0.005 else f"{minutes:.1f} min"
+    return f"{seconds / 3600.0:.2f} h"

@@ -1,0 +1,112 @@
+"""What a person sees: progress while a run goes on, and its answer."""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Iterable
+from types import TracebackType
+from typing import TYPE_CHECKING, Any, Self
+
+import click
+from rich.console import Console
+from rich.table import Table
+
+from fem.result.answer import details, duration, sentence
+from fem.result.folder import Result
+
+if TYPE_CHECKING:
+    from fem.march.step import Moment
+    from fem.watch.record import Record
+
+
+class Progress:
+    """A line that tells simulated time, ice and the time left; silent where nobody watches.
+
+    Parameters
+    ----------
+    lasts
+        Longest duration of the run [s].
+
+    """
+
+    def __init__(self, lasts: float):
+        from rich.progress import BarColumn, TextColumn, TimeRemainingColumn
+        from rich.progress import Progress as Bar
+
+        self._lasts = lasts
+        console = Console(stderr=True)
+        self._bar = Bar(
+            TextColumn("{task.fields[clock]:>10} of " + duration(lasts)),
+            BarColumn(bar_width=30),
+            TextColumn("{task.fields[ice]}"),
+            TimeRemainingColumn(),
+            console=console,
+            transient=True,
+            disable=not console.is_terminal,
+        )
+        self._task = self._bar.add_task("", total=lasts, clock="0 s", ice="")
+
+    def __enter__(self) -> Self:
+        """Start the line."""
+        self._bar.start()
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        """Clear the line."""
+        self._bar.stop()
+
+    def __call__(self, time: float, record: Record, moment: Moment) -> None:
+        """Move the line to a time [s]."""
+        if self._bar.disable:
+            return
+        product = record.product
+        ice = product.mean_ice(product.ice(record.body.temperature(moment.u)))
+        said = "" if ice != ice else f"ice {100 * ice:3.0f} %"
+        self._bar.update(self._task, completed=time, clock=duration(time), ice=said)
+
+
+def show_json(summary: dict[str, Any]) -> None:
+    """Print ``summary.json`` on standard output, and nothing else."""
+    click.echo(json.dumps(summary, indent=2, ensure_ascii=False))
+
+
+def show_answer(result: Result, to_stderr: bool = False) -> None:
+    """Print the answer: the sentence first, then what stands behind it."""
+    console = Console(stderr=to_stderr, highlight=False)
+    console.print(sentence(result.summary), style="bold", soft_wrap=True)
+    console.print()
+    table = Table.grid(padding=(0, 2))
+    table.add_column(style="cyan", no_wrap=True)
+    table.add_column(overflow="fold")
+    for label, text in details(result.summary):
+        table.add_row(label, text, style="yellow" if label == "caution" else None)
+    if result.folder is not None:
+        table.add_row("run folder", str(result.folder))
+    console.print(table)
+
+
+def show_verdicts(verdicts: Iterable[Any], as_json: bool) -> bool:
+    """Print the lines of ``verify`` as they come; return whether all passed."""
+    lines = []
+    console = Console(stderr=as_json, highlight=False)
+    heads = ("check", "quantity", "exact", "ours", "error", "bound", "rate", "verdict")
+    table = Table(*heads, box=None, header_style="bold", pad_edge=False)
+    for verdict in verdicts:
+        lines.append(verdict)
+        cells = (*verdict.cells(), "passes" if verdict.passed else "FAILS")
+        table.add_row(*cells, style=None if verdict.passed else "bold red")
+    console.print(table)
+    sources = {verdict.check: verdict.source for verdict in lines}
+    console.print()
+    for check, source in sources.items():
+        console.print(f"{check}: {source}", soft_wrap=True)
+    passed = all(verdict.passed for verdict in lines)
+    console.print()
+    console.print(
+        f"{sum(v.passed for v in lines)} of {len(lines)} lines pass; each is a case through the same solver."
+    )
+    if as_json:
+        click.echo(json.dumps([verdict.as_dict() for verdict in lines], indent=2))
+    return passed
