@@ -8,6 +8,7 @@ from collections.abc import Callable, Iterator
 from pathlib import Path
 
 from fem.case.case import Case, Stage
+from fem.case.portable import portable
 from fem.errors import CaseError, Problem, RunFailure
 from fem.heat.problem import HeatProblem
 from fem.march.march import Moment, Step, begin, march
@@ -56,7 +57,7 @@ def run(
         record = Record(plan.body, case.watch, plan.surfaces, plan.cooling)
     except ValueError as error:
         raise CaseError(case.source, [Problem("watch", str(error))]) from error
-    out = RunFolder(Path(folder), case.text, {}, overwrite) if folder is not None else None
+    out = RunFolder(Path(folder), *portable(case.text, case.folder), overwrite) if folder is not None else None
     summary = Summary(case, plan.body, plan.start, record, out, started, plan.cautions())
     try:
         for step in _steps(plan, record, summary):

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass, field
+from pathlib import Path
 from typing import Annotated, Any, Self
 
 from pydantic import BaseModel, ConfigDict, Field, PlainValidator, model_validator
@@ -166,6 +167,8 @@ class Case:
         The case as run, overrides applied.
     source
         What was read, as the user named it.
+    folder
+        Where the files that the case names are looked for.
 
     """
 
@@ -181,6 +184,7 @@ class Case:
     stepping: Stepping
     text: str = field(repr=False)
     source: str
+    folder: Path
 
     @property
     def lasts(self) -> float:

@@ -103,6 +103,7 @@ def loads(text: str, source: str = "<text>", folder: Path = Path(), overrides: S
         stepping=stepping or Stepping(),
         text=text,
         source=source,
+        folder=folder,
     )
 
 

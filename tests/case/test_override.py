@@ -54,6 +54,7 @@ def test_only_the_one_line_changes() -> None:
         ),
         ('"a=b".c=3', ("a=b", "c"), 3),
         ("title=a\nb = 3", ("title",), "a\nb = 3"),
+        ('title="a"\nb = 3', ("title",), '"a"\nb = 3'),
     ],
 )
 def test_a_value_is_toml_or_text(override: str, path: tuple[str, ...], value: object) -> None:
