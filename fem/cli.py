@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
-from fem.errors import CaseError, RunFailure
+from fem.errors import CaseError, Problem, RunFailure
 
 if TYPE_CHECKING:
     from fem.case.case import Case
@@ -62,7 +62,10 @@ _SET = click.option(
 @click.option("--into", type=click.Path(path_type=Path), help="Folder to write; by default runs/CASE.")
 @click.option("--overwrite", is_flag=True, help="Replace the run folder given with --into.")
 @click.option("--json", "as_json", is_flag=True, help="Print summary.json; text goes to standard error.")
-def run(case: Path, overrides: tuple[str, ...], into: Path | None, overwrite: bool, as_json: bool) -> None:
+@click.option("--no-report", is_flag=True, help="Leave report.html out; rimefront report writes it later.")
+def run(
+    case: Path, overrides: tuple[str, ...], into: Path | None, overwrite: bool, as_json: bool, no_report: bool
+) -> None:
     """Run CASE and say when its slowest point is cold enough."""
     from fem.case.read import load
     from fem.result.folder import fresh
@@ -73,9 +76,23 @@ def run(case: Path, overrides: tuple[str, ...], into: Path | None, overwrite: bo
     folder = into if into is not None else fresh(case.stem)
     with Progress(read.lasts) as progress:
         result = run_case(read, folder, overwrite=overwrite, progress=progress)
-    if as_json:
-        show_json(result.summary)
-    show_answer(result, to_stderr=as_json)
+    try:
+        if not no_report:
+            _report_of(folder)
+    finally:
+        if as_json:
+            show_json(result.summary)
+        show_answer(result, to_stderr=as_json)
+
+
+@rimefront.command()
+@click.argument("folder", metavar="RUN", type=click.Path(path_type=Path))
+@click.option("--into", type=click.Path(path_type=Path), help="File to write; by default report.html in RUN.")
+def report(folder: Path, into: Path | None) -> None:
+    """Write the report of a run folder again, from the folder alone."""
+    from fem.result.report import write_report
+
+    click.echo(write_report(folder, into))
 
 
 @rimefront.command()
@@ -87,6 +104,74 @@ def verify(as_json: bool) -> None:
 
     if not show_verdicts(verify_all(), as_json):
         raise SystemExit(FAILED)
+
+
+@rimefront.command()
+@click.argument("folder", metavar="RUN", type=click.Path(path_type=Path))
+@click.option("--picture", type=click.Path(path_type=Path), help="PNG file to draw instead of a window.")
+@click.option("--array", default="temperature_degC", show_default=True, help="Field to show.")
+@click.option("--time", help='Time to show, such as "10 min"; by default the end.')
+def show(folder: Path, picture: Path | None, array: str, time: str | None) -> None:
+    """Show the fields of a run folder in a window with a time slider, or draw a picture."""
+    from fem.quantity import MOMENT
+    from fem.result.view import CannotDraw, window
+    from fem.result.view import picture as draw_picture
+
+    try:
+        moment = None if time is None else MOMENT.read(time)
+    except ValueError as error:
+        raise CaseError("show", [Problem("--time", str(error))]) from error
+    try:
+        if picture is None:
+            window(folder, array, moment)
+        else:
+            click.echo(draw_picture(folder, picture, array, moment))
+    except CannotDraw as error:
+        _say(str(error))
+        raise SystemExit(FAILED) from error
+
+
+@rimefront.command()
+@click.argument("product", metavar="bar|tube")
+@click.option("--into", type=click.Path(path_type=Path), help="File to write; by default standard output.")
+def draft(product: str, into: Path | None) -> None:
+    """Write a commented starter case that runs as it is."""
+    from fem.case.draft import draft as draft_of
+
+    text = draft_of(product)
+    if into is None:
+        click.echo(text, nl=False)
+        return
+    try:
+        with into.open("x", encoding="utf-8") as file:
+            file.write(text)
+    except FileExistsError as error:
+        message = "exists already and is left as it is; choose another name"
+        raise CaseError(str(into), [Problem("--into", message)]) from error
+    _say(f"{into} is written; next: rimefront run {into}")
+
+
+@rimefront.command()
+def schema() -> None:
+    """Print the JSON Schema of case files, for editors."""
+    import json
+
+    from fem.case.schema import schema as schema_of
+
+    click.echo(json.dumps(schema_of(), indent=2, ensure_ascii=False))
+
+
+def _report_of(folder: Path) -> None:
+    """Write the report of a run that has just ended; its answer is worth more than its page."""
+    try:
+        from fem.result.report import write_report
+
+        write_report(folder)
+    except OSError:
+        raise
+    # Whatever else goes wrong with a picture, the run is done and its answer follows.
+    except Exception as error:
+        _say(f"report.html is left out: {error}; the run is complete, rimefront report {folder} tries again")
 
 
 def _say(text: Any) -> None:

@@ -7,16 +7,18 @@ row of a value that cannot be right.
 from __future__ import annotations
 
 import csv
+import json
 import math
 import re
 from collections.abc import Collection
+from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
-from pydantic import AfterValidator, BaseModel, ConfigDict, field_validator
-from pydantic_core import PydanticCustomError
+from pydantic import BaseModel, ConfigDict, GetCoreSchemaHandler, field_validator
+from pydantic_core import CoreSchema, PydanticCustomError, core_schema
 
 from fem.errors import unknown
 from fem.quantity import Kind, converter
@@ -81,18 +83,35 @@ class Column(BaseModel):
         return values
 
 
-def holds(kind: Kind) -> AfterValidator:
-    """Return the annotation of a column field whose values have to be of one kind.
+@dataclass(frozen=True)
+class holds:
+    """Declare a column field whose values have to be of one kind.
 
     ``temperature: Annotated[Column, holds(TEMPERATURE)]`` puts a wrong unit or value at its own
     key instead of at the whole table.
+
+    Parameters
+    ----------
+    kind
+        The quantity; its bounds hold for every value.
+
     """
 
-    def check(column: Column) -> Column:
-        column.in_unit(kind)
-        return column
+    kind: Kind
 
-    return AfterValidator(check)
+    def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
+        """Read a column, then convert it once to see whether it can be right."""
+        return core_schema.no_info_after_validator_function(self._check, handler(source))
+
+    def __get_pydantic_json_schema__(self, schema: Any, handler: Any) -> dict[str, Any]:
+        """Describe the column for editors."""
+        number, _, unit = self.kind.example.partition(" ")
+        example = {"unit": unit, "values": [json.loads(number)]}
+        return {**handler(schema), "title": f"list of {self.kind.name}", "examples": [example]}
+
+    def _check(self, column: Column) -> Column:
+        column.in_unit(self.kind)
+        return column
 
 
 def read_csv_columns(path: Path, wanted: Collection[str] | None = None) -> dict[str, Column]:

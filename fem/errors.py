@@ -60,7 +60,7 @@ class Refused(ValueError):
     Parameters
     ----------
     problems
-        Their places are relative to the table ("corner").
+        Their places are relative to the table ("corner"); "" is the table itself.
 
     """
 

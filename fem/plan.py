@@ -39,7 +39,12 @@ class Plan:
         """Mesh the shape and build the materials of a case."""
         built = {name: material.build() for name, material in case.materials.items()}
         domain = build(case.shape, case.piece.length)
-        return cls(case, Body(domain, {region: built[case.regions[region]] for region in domain.regions}))
+        materials = {region: built[case.regions[region]] for region in domain.regions}
+        if "product" not in materials:
+            # A mesh may call its regions anything: product is then what can freeze.
+            frozen = tuple(region for region, material in materials.items() if material.freezes)
+            domain = replace(domain, product=frozen or tuple(materials))
+        return cls(case, Body(domain, materials))
 
     @cached_property
     def surfaces(self) -> tuple[str, ...]:

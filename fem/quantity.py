@@ -20,6 +20,10 @@ if TYPE_CHECKING:
     import pint
 
 _NUMBER = re.compile(r"\s*([+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?|[+-]?inf|nan)(?![\d.,])\s*(.*)")
+# For editors, in the regular expressions that JSON Schema shares with them. A unit does not begin
+# like the rest of a number, so that "22", "1e5" and "0,8 mm" have none.
+_NUMBER_PATTERN = r"[-+−]?(\d+\.?\d*|\.\d+)([eE][-+]?\d+)?"
+_UNIT_PATTERN = r"[^-+\d\s.,eE]"
 _TEMPERATURE_UNITS = ("degC", "degF", "K")
 
 
@@ -59,8 +63,23 @@ class Kind:
         )
 
     def __get_pydantic_json_schema__(self, schema: Any, handler: Any) -> dict[str, Any]:
-        """Describe the value for editors: a string, with an example."""
-        return {"type": "string", "description": self.name, "examples": [self.example]}
+        """Describe the value for editors."""
+        return self.described()
+
+    def described(self) -> dict[str, Any]:
+        """Return the JSON Schema of a value: text with number and unit; bare numbers do not fit."""
+        bare = self.unit == "1"
+        return {
+            "title": self.name,
+            "type": ["string", "number"] if bare else "string",
+            "pattern": rf"^\s*{_NUMBER_PATTERN}\s*{'' if bare else _UNIT_PATTERN}",
+            "examples": [self.example],
+        }
+
+    def written(self, value: float) -> str:
+        """Return a value as a case would have it: ``"60 s"``; 0 in the unit of the example."""
+        unit = self.unit if value else self.example.partition(" ")[2]
+        return f"{value:g} {unit.replace('percent', '%').removeprefix('1')}".rstrip()
 
     def read(self, raw: Any) -> float:
         """Return the value in `unit`; raise PydanticCustomError with the remedy."""

@@ -14,6 +14,7 @@ from fem.heat.problem import HeatProblem
 from fem.march.march import Moment, Step, begin, march
 from fem.mesh.domain import Array
 from fem.plan import Plan
+from fem.result.fields import check_format
 from fem.result.folder import Result, RunFolder
 from fem.summary import Summary
 from fem.watch.arrival import Arrival
@@ -49,17 +50,21 @@ def run(
         Where a watched place lies outside the piece, or the folder exists.
     RunFailure
         Where the march cannot go on; the folder says so and keeps what came before.
+    OSError
+        Where the folder cannot be written; likewise, as far as there is room.
 
     """
     started = clock.perf_counter()
     plan = Plan.of(case)
     try:
+        check_format(case.watch.fields)
         record = Record(plan.body, case.watch, plan.surfaces, plan.cooling)
     except ValueError as error:
         raise CaseError(case.source, [Problem("watch", str(error))]) from error
     out = RunFolder(Path(folder), *portable(case.text, case.folder), overwrite) if folder is not None else None
     summary = Summary(case, plan.body, plan.start, record, out, started, plan.cautions())
     try:
+        summary.begin()
         for step in _steps(plan, record, summary):
             if progress is not None:
                 progress(step.after.time, record, step.after)
@@ -72,6 +77,9 @@ def run(
         raise
     except KeyboardInterrupt:
         summary.end("interrupted", "stopped from the keyboard; what was computed before is kept")
+        raise
+    except OSError as error:
+        summary.give_up(error)
         raise
     finally:
         if out is not None:

@@ -120,8 +120,14 @@ class signal:
 
     def __get_pydantic_json_schema__(self, schema: Any, handler: Any) -> dict[str, Any]:
         """Describe the value for editors."""
-        text = {"type": "string", "examples": [self.kind.example]}
-        return {"description": self.kind.name, "anyOf": [text, {"type": "object"}]}
+        rows = {**handler.resolve_ref_schema(handler(schema)), "additionalProperties": False}
+        named = {key: {"type": "string"} for key in ("log", "column")}
+        log = {"type": "object", "properties": named, "required": list(named), "additionalProperties": False}
+        return {
+            "title": f"{self.kind.name}, steady or changing",
+            "anyOf": [self.kind.described(), rows, log],
+            "examples": [self.kind.example],
+        }
 
     def _read(self, raw: Any, columns: Any, info: core_schema.ValidationInfo) -> Signal:
         if isinstance(raw, Signal):

@@ -5,6 +5,7 @@ from __future__ import annotations
 import logging
 import platform
 import time as clock
+from contextlib import suppress
 from importlib.metadata import version
 from typing import Any
 
@@ -12,6 +13,7 @@ from fem.case.case import Case, Stage
 from fem.heat.body import Body
 from fem.march.march import Effort, Step
 from fem.mesh.domain import Array
+from fem.result.fields import Fields
 from fem.result.folder import Result, RunFolder, Table
 from fem.watch.arrival import Arrival
 from fem.watch.ledger import imbalance
@@ -71,7 +73,14 @@ class Summary:
             self.arrival = Arrival(lambda u: record.measure(u, aim.at), aim.reach, record.product.cooling)
             if self.arrival.lag(start) <= 0.0:
                 self.arrival.time = 0.0
+        self.fields: Fields | None = None
+
+    def begin(self) -> None:
+        """Write the first word, and the fields at the start."""
         self._write()
+        if self.out is not None and self.case.watch.fields != "none":
+            reach = self.case.aim.reach if self.case.aim else None
+            self.fields = Fields(self.out.path, self.case.watch, self.record.product, reach, self._u)
 
     def add(self, rows: Rows) -> None:
         """Take a row of the curves and one of the fronts."""
@@ -84,6 +93,8 @@ class Summary:
             self.arrival.see(step)
         self._u, self._time = step.after.u, step.after.time
         self._left = (step.after.u, step.after.carried)
+        if self.fields is not None:
+            self.fields.see(step)
         log.debug("t = %.6g s, step %.4g s, %s", step.after.time, step.size, self.effort)
         if clock.perf_counter() - self._written > SECONDS_BETWEEN:
             self._write()
@@ -105,6 +116,8 @@ class Summary:
         )
         if stage.until is not None and not met:
             self.cautions.append(f"stage {stage.name} ended because {why}")
+        if self.fields is not None:
+            self.fields.end_stage(time, u)
         log.info("stage %s ended at %.6g s: %s", stage.name, time, why)
         self._write()
 
@@ -112,7 +125,16 @@ class Summary:
         """Write the last word."""
         self._state = {"outcome": outcome, "why": why}
         log.info("%s: %s", outcome, why)
+        if self.fields is not None:
+            self.fields.end(self._time, self._u)
         self._write()
+
+    def give_up(self, error: OSError) -> None:
+        """Say that the folder could not be written any further, if it takes even that."""
+        why = f"{error.filename or 'a file'} could not be written: {error.strerror}"
+        self._state = {"outcome": "failed", "why": why}
+        with suppress(OSError):
+            self._write()
 
     def result(self) -> Result:
         """Return what was last written, and every row."""

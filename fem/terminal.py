@@ -84,6 +84,8 @@ def show_answer(result: Result, to_stderr: bool = False) -> None:
         table.add_row(label, text, style="yellow" if label == "caution" else None)
     if result.folder is not None:
         table.add_row("run folder", str(result.folder))
+        if (page := result.folder / "report.html").exists():
+            table.add_row("report", str(page))
     console.print(table)
 
 
@@ -93,10 +95,12 @@ def show_verdicts(verdicts: Iterable[Any], as_json: bool) -> bool:
     console = Console(stderr=as_json, highlight=False)
     heads = ("check", "quantity", "exact", "ours", "error", "bound", "rate", "verdict")
     table = Table(*heads, box=None, header_style="bold", pad_edge=False)
-    for verdict in verdicts:
-        lines.append(verdict)
-        cells = (*verdict.cells(), "passes" if verdict.passed else "FAILS")
-        table.add_row(*cells, style=None if verdict.passed else "bold red")
+    with Console(stderr=True).status("running cases with exact answers") as status:
+        for verdict in verdicts:
+            lines.append(verdict)
+            cells = (*verdict.cells(), "passes" if verdict.passed else "FAILS")
+            table.add_row(*cells, style=None if verdict.passed else "bold red")
+            status.update(f"{len(lines)} lines done, last: {verdict.check}")
     console.print(table)
     sources = {verdict.check: verdict.source for verdict in lines}
     console.print()

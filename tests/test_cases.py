@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from functools import cache
 from pathlib import Path
 
@@ -14,6 +15,10 @@ from fem.result.folder import Result
 from fem.run import run
 from tests.conftest import CASES
 
+STAINLESS = ("regions.wall=stainless", "shape.wall=0.8 mm")
+SILICONE = ("regions.wall=silicone", "shape.wall=2.5 mm")
+BLAST = ("stages.freeze.surfaces.outside.h=30 W/m2/K", "stages.freeze.surfaces.outside.coolant=-30 degC")
+
 # Expected times come from an independent finite-volume enthalpy calculation of the same cases
 # (1 mm cells; computed for the demo scenario, no published source).
 EXPECTED = {
@@ -21,6 +26,14 @@ EXPECTED = {
     ("factory_bar", ()): (416.0, 0.05),
     ("factory_bar", ("stages.freeze.surfaces.outside.h=400 W/m2/K",)): (508.0, 0.05),
     ("tube_in_brine", ()): (967.0, 0.05),
+    ("tube_in_blast", ()): (3000.0, 0.05),
+    ("tube_at_home", ()): (5.4 * 3600, 0.06),
+    ("fruit_bar", ()): (1283.0, 0.05),
+    ("mould_swap", ()): (2080.0, 0.05),
+    ("mould_swap", STAINLESS): (1178.0, 0.05),
+    ("mould_swap", SILICONE): (2120.0, 0.05),
+    ("mould_swap", STAINLESS + BLAST): (3460.0, 0.05),
+    ("mould_swap", SILICONE + BLAST): (4070.0, 0.05),
 }
 
 
@@ -62,6 +75,44 @@ def test_workshop_bar_just_passes_and_factory_bar_fails_at_low_agitation() -> No
     slow = result_of("factory_bar", ("stages.freeze.surfaces.outside.h=400 W/m2/K",))
     assert slow.summary["aim"]["met"] is False
     assert "no, 7.3 min is not enough" in sentence(slow.summary)
+
+
+def test_a_plastic_mould_costs_much_in_brine_and_little_in_air() -> None:
+    def longer(mould: tuple[str, ...], coolant: tuple[str, ...] = ()) -> float:
+        times = [result_of("mould_swap", m + coolant).summary["aim"]["time_s"] for m in (mould, STAINLESS)]
+        return 100.0 * (times[0] / times[1] - 1.0)
+
+    assert longer(()) == pytest.approx(80, abs=6)
+    assert longer(SILICONE) == pytest.approx(80, abs=6)
+    assert longer(SILICONE, BLAST) == pytest.approx(18, abs=6)
+    steel = result_of("mould_swap", STAINLESS).summary["aim"]["time_s"]
+    assert steel == pytest.approx(result_of("workshop_bar").summary["aim"]["time_s"], rel=1e-9)
+
+
+def test_the_overrides_of_the_mould_swap_are_those_that_its_comments_offer() -> None:
+    offered = re.findall(
+        r"--set (\S+?)=(?:\"(.*?)\"|(\S+))", (CASES / "mould_swap.toml").read_text(encoding="utf-8")
+    )
+    assert {f"{key}={quoted or bare}" for key, quoted, bare in offered} == {*STAINLESS, *SILICONE, *BLAST}
+
+
+def test_the_fruit_bar_is_half_ice_and_a_hand_estimate_falls_short() -> None:
+    mix = load(CASES / "fruit_bar.toml").materials["mix"].build()
+    # Lever rule on the computed freezing curve of this mix (no published source).
+    assert mix.freezing_point == pytest.approx(-3.31, abs=0.03)
+    assert float(mix.ice(-12.0)) == pytest.approx(0.50, abs=0.01)
+    summary = result_of("fruit_bar").summary
+    assert summary["aim"]["met"] is False
+    # Hand estimate 1024 s: Pham's method by hand for this bar (formulas from memory).
+    assert 1024.0 / summary["aim"]["time_s"] == pytest.approx(0.80, abs=0.04)
+
+
+def test_the_tube_at_home_loses_9_watts_per_square_metre_and_kelvin() -> None:
+    (stage,) = load(CASES / "tube_at_home.toml").stages
+    side = stage.surfaces["side"]
+    flux, _ = side.flux(np.array([-3.0]), 0.0)
+    # 9 W/m2/K outside and 0.1 mm of polyethylene film of 0.33 W/m/K.
+    assert float(flux[0]) / 15.0 == pytest.approx(1 / (1 / 9 + 1e-4 / 0.33), rel=2e-3)
 
 
 def test_workshop_bar_is_near_its_own_refined_value() -> None:

@@ -7,7 +7,7 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Annotated, Any, Self
 
-from pydantic import BaseModel, ConfigDict, Field, PlainValidator, model_validator
+from pydantic import BaseModel, ConfigDict, Field, PlainValidator, WithJsonSchema, model_validator
 
 from fem.errors import Problem, Refused
 from fem.heat.exchange import Exchange
@@ -27,11 +27,12 @@ class Piece(BaseModel):
     section
         Whether the shape is in (x, y) or in (r, z).
     length
-        Of a plane piece along the normal [m]; None where axisymmetric.
+        How long a plane piece is along the normal [m], such as "83 mm": heat and mass are per piece.
+        Left out where the section is axisymmetric.
     start_temperature
-        Of every region that `start` does not name [degC].
+        Temperature at the start of every region that `start` does not name [degC], such as "4 degC".
     start
-        Region -> start temperature [degC].
+        Temperatures at the start [degC], by region.
 
     """
 
@@ -98,27 +99,33 @@ class Until:
         return cls(match[1], match[2] == "<=", TEMPERATURE.read(match[3]))
 
 
+_CONDITION = WithJsonSchema(
+    {"title": "condition", "type": "string", "pattern": "[<>]=", "examples": ["slowest <= -12 degC"]}
+)
+
+
 class Stage(BaseModel):
     """One stage: what each surface meets, and for how long.
 
     Parameters
     ----------
     name
-        Said in the answer and used by overrides.
+        Name of the stage, said in the answer and used by overrides.
     lasts
-        Longest duration [s].
+        How long it lasts at most [s].
     until
-        What may end it earlier; None for nothing.
+        What may end it earlier: "slowest" or a watched point, <= or >=, a temperature. If it is not
+        met in time, the stage ends all the same and a caution says so.
     surfaces
-        Surface -> exchange; a surface without entry is insulated.
+        What each surface meets, by its name; a surface without entry is insulated.
 
     """
 
     model_config = ConfigDict(frozen=True, extra="forbid")
 
-    name: Annotated[str, Field(min_length=1)]
+    name: Annotated[str, Field(min_length=1, examples=["freeze"])]
     lasts: Duration
-    until: Annotated[Until, PlainValidator(Until.read)] | None = None
+    until: Annotated[Until, PlainValidator(Until.read), _CONDITION] | None = None
     surfaces: dict[str, Exchange] = {}
 
 
@@ -128,11 +135,11 @@ class Aim(BaseModel):
     Parameters
     ----------
     at
-        "slowest", or the name of a watched point.
+        Where: "slowest", the slowest point of the product, or the name of a watched point.
     reach
-        Temperature to reach [degC].
+        Temperature to reach [degC], such as "-12 degC".
     within
-        Time since the run began [s]; None where any time will do.
+        Time since the run began [s]; any time will do if left out.
 
     """
 

@@ -11,7 +11,7 @@ from pydantic_core import PydanticCustomError
 from fem.case.case import Aim, Piece, Stage
 from fem.case.wording import Note
 from fem.errors import unknown
-from fem.mesh.shape import SHAPES, Box, Shape
+from fem.mesh.shape import SHAPES, Box, MeshShape, Shape
 from fem.quantity import DURATION
 from fem.watch.schedule import SLOWEST, Watch
 
@@ -91,6 +91,11 @@ def check(parts: Parts) -> Iterator[Note]:
 
 def _section(parts: Parts) -> Iterator[Note]:
     shape, section = parts.form(), parts.table("piece").get("section")
+    if isinstance(parts.shape, MeshShape):
+        said = parts.shape.file.beyond_axis(parts.shape.length_unit) if section == "axisymmetric" else None
+        if said is not None:
+            yield Note(("shape", "file"), said)
+        return
     if shape is None or shape.section is None or section not in ("plane", "axisymmetric"):
         return
     if section != shape.section:
@@ -198,9 +203,11 @@ def _front(parts: Parts) -> Iterator[Note]:
     if "front" not in parts.watch.model_fields_set and not parts.watch.rays:
         return
     level = parts.watch.front.kind
-    for region, name in parts.regions.items():
+    freezes = [r for r, name in parts.regions.items() if name in parts.built and parts.built[name].freezes]
+    product = ["product"] if "product" in parts.regions else freezes or list(parts.regions)
+    for name in dict.fromkeys(parts.regions[region] for region in product):
         material = parts.built.get(name)
-        if material is None or (region != "product" and "product" in parts.regions):
+        if material is None:
             continue
         if level == "freezing point" and material.freezing_point is None:
             remedy = "state its freezing_point, or take" if material.freezes else "take"

@@ -47,7 +47,8 @@ def notes(error: ValidationError, model: type[BaseModel], path: KeyPath) -> Iter
         cause = detail.get("ctx", {}).get("error")
         if isinstance(cause, Refused):
             for problem in cause.problems:
-                yield Note((*path, *at, *problem.place.split(".")), one_line(problem.message))
+                inner = problem.place.split(".") if problem.place else ()
+                yield Note((*path, *at, *inner), one_line(problem.message))
         else:
             yield Note((*path, *at), one_line(_said(detail, model, at, cause)))
 

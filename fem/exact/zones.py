@@ -131,13 +131,13 @@ def solve(
     a = np.sqrt(k / [step.capacity for step in steps])
     ends = [step.end for step in steps[:-1]]
     last = len(ends)
-    # No front lies further out, however slight the superheat: erfc underflows there.
-    far = 26.0 * float(a.max())
 
     def gain(i: int, inner: float, outer: float) -> float:
         """Return g of zone i between its two fronts, referred to the outer one."""
         drop = float(kernel.log(inner / a[i]) - kernel.log(outer / a[i]))
-        # The form that neither overflows nor cancels, however thin or thick the zone.
+        # Rounding may leave a thin zone far out no drop at all; the search then needs a large g.
+        drop = max(drop, 1e-18)
+        # The form that does not overflow, however thick the zone.
         return (ends[i] - ends[i - 1]) * float(np.exp(-drop) / -np.expm1(-drop))
 
     def leaving(i: int, inner: float) -> tuple[float, tuple[float, ...]]:
@@ -145,7 +145,7 @@ def solve(
         ratio = k[i] / a[i] * float(kernel.ratio(inner / a[i]))
         if i == last:
             return ratio * (start - ends[-1]), ()
-        outer = _root(lambda eta: excess(i, gain(i, inner, eta), eta), inner, far)
+        outer = _root(lambda eta: excess(i, gain(i, inner, eta), eta), inner, a[i])
         return ratio * (gain(i, inner, outer) + ends[i] - ends[i - 1]), (outer, *leaving(i + 1, outer)[1])
 
     def excess(i: int, g: float, eta: float) -> float:
@@ -153,7 +153,7 @@ def solve(
         carried = k[i] / a[i] * g * float(kernel.ratio(eta / a[i]))
         return carried - leaving(i + 1, eta)[0] - 2.0 * eta * steps[i].latent
 
-    first = _root(lambda eta: excess(0, first_gain(eta / a[0]), eta), 0.0, far)
+    first = _root(lambda eta: excess(0, first_gain(eta / a[0]), eta), 0.0, a[0])
     fronts = (first, *leaving(1, first)[1])
     gains = [gain(i, fronts[i - 1], fronts[i]) for i in range(1, last)]
     reference = np.array([*fronts, fronts[-1]]) / a
@@ -168,8 +168,16 @@ def solve(
     )
 
 
-def _root(excess: Callable[[float], float], low: float, high: float) -> float:
-    """Root of a function that falls from +infinity at `low`; no scale is known in advance."""
-    inner = low + 1e-9 * max(low, high - low)
-    outer = max(high, 2.0 * low)
-    return float(brentq(excess, inner, outer, xtol=1e-20, rtol=8.9e-16, maxiter=500))
+def _root(excess: Callable[[float], float], low: float, scale: float) -> float:
+    """Root beyond `low` of a function that falls from +infinity there to below 0.
+
+    Bracketed outwards from `scale`: far off, the fronts beyond stand where all but nothing is left.
+    """
+    near = far = 0.1 * scale
+    while excess(low + near) < 0:
+        near /= 4.0
+    while excess(low + far) > 0:
+        far *= 2.0
+    if near == far:
+        return low + near
+    return float(brentq(excess, low + near, low + far, xtol=1e-60, rtol=8.9e-16, maxiter=500))

@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
+import copy
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import scipy.sparse as sp
@@ -118,6 +119,17 @@ class Body:
             leader[rest] = product[near]
         return leader
 
+    def with_materials(self, materials: Mapping[str, Material]) -> Body:
+        """Return the same meshed piece of other materials; nothing is assembled again.
+
+        Regions that shared a material have to share one still.
+        """
+        other = copy.copy(self)
+        other.materials = dict(materials)
+        regions = {id(m): region for region, m in self.materials.items()}
+        other.parts = [replace(p, material=materials[regions[id(p.material)]]) for p in self.parts]
+        return other
+
     def state(self, u: Array) -> State:
         """Return each node's temperature, and its host's Kirchhoff integral, capacity, conductivity."""
         if self.single:
@@ -171,6 +183,19 @@ class Body:
             if len(part.guest):
                 theta[part.guest] = part.curve.kirchhoff(state.temperature[part.guest])
             flow -= part.stiffness @ theta
+        return flow
+
+    def conduction_change(self, state: State, dT: Array) -> Array:
+        """Return the change of `conduction` [W] for changes of temperature [K], shape (n, m)."""
+        if self.single:
+            return np.asarray(-(self.parts[0].stiffness @ (state.conductivity[:, None] * dT)))
+        flow = np.zeros_like(dT)
+        for part in self.parts:
+            k = np.zeros(self.size)
+            k[part.hosted] = state.conductivity[part.hosted]
+            if len(part.guest):
+                k[part.guest] = part.curve.conductivity(state.temperature[part.guest])
+            flow -= part.stiffness @ (k[:, None] * dT)
         return flow
 
     def scale(self, state: State) -> Array:

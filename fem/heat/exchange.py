@@ -156,7 +156,7 @@ class Flux(Exchange):
     Parameters
     ----------
     flux_out
-        Heat flux leaving the product [W/m2]; ``flux`` in the case file.
+        Heat flux, positive where it leaves the product [W/m2].
 
     """
 
@@ -176,11 +176,14 @@ class Radiant(Exchange):
     Parameters
     ----------
     emissivity
-        Of the surface [-].
+        Emissivity of the surface [-].
     surroundings
-        Temperature of the walls around [degC].
-    h, air
-        Heat transfer coefficient [W/m2/K] and temperature [degC] of the air; both or neither.
+        Temperature of the walls around [degC], such as "-18 degC".
+    h
+        Heat transfer coefficient of the air, its convection only [W/m2/K], such as "5 W/m2/K";
+        with `air` or not at all.
+    air
+        Temperature of the air [degC], such as "-18 degC"; with `h` or not at all.
 
     """
 

@@ -1,22 +1,30 @@
 """Symmetric positive definite systems of one fixed pattern, solved many times over.
 
-The ordering and the symbolic factorisation are done once. A small bandwidth goes to banded
-Cholesky, which is dense arithmetic without any index; a wide one to sparse LDL'.
+What depends on the pattern alone is done once. A ladder of three solvers: a small bandwidth goes
+to banded Cholesky, which is dense arithmetic without any index; a wide one to sparse LDL'; and
+many unknowns to conjugate gradients with a multigrid hierarchy that is kept while it serves.
 """
 
 from __future__ import annotations
 
+import warnings
 from typing import Any, Protocol
 
 import numpy as np
 import scipy.sparse as sp
 from scipy.linalg import lapack
-from scipy.sparse.csgraph import reverse_cuthill_mckee
+from scipy.sparse.csgraph import breadth_first_order, reverse_cuthill_mckee
 
 from fem.mesh.domain import Array
 
 # Banded work grows with the square of the bandwidth: past this the sparse factor is cheaper.
 WIDEST_BAND = 160
+# Past this many unknowns a hierarchy and its iterations are cheaper than either factor.
+MOST_FOR_FACTORS = 40_000
+# A residual of 1e-8 of the right-hand side; looser ones show in the enthalpies.
+RESIDUAL, MOST_ITERATIONS = 1e-8, 100
+# A new hierarchy costs about as much as this many iterations.
+PRICE_OF_HIERARCHY = 8
 
 
 class Pattern:
@@ -57,12 +65,26 @@ class Factor(Protocol):
     def solve(self, data: Array, rhs: Array) -> Array:
         """Return x with A x = rhs, for the values of A along the pattern.
 
+        Parameters
+        ----------
+        data
+            Values of A along the pattern, shape (nnz,).
+        rhs
+            One right-hand side, shape (n,), or several, shape (n, m).
+
+        Returns
+        -------
+        The solutions, shape of `rhs`.
+
         Raises
         ------
         ArithmeticError
             If A is not positive definite.
 
         """
+
+    def again(self, rhs: Array) -> Array:
+        """Return x with A x = rhs for the matrix of the last `solve`, shape of `rhs`."""
 
 
 class BandedCholesky:
@@ -84,10 +106,13 @@ class BandedCholesky:
         self._band[:] = 0.0
         self._band.reshape(-1)[self._target] = data[self._lower]
         # The transpose of a C array is what LAPACK calls lower band storage, with no copy.
-        factor, info = lapack.dpbtrf(self._band.T, lower=1, overwrite_ab=1)
-        if info != 0:
-            raise ArithmeticError("the matrix of the step is not positive definite")
-        x, _ = lapack.dpbtrs(factor, rhs[self.order], lower=1)
+        self._factor, info = lapack.dpbtrf(self._band.T, lower=1, overwrite_ab=1)
+        _refuse_unless(info == 0)
+        return self.again(rhs)
+
+    def again(self, rhs: Array) -> Array:
+        """Return the solution for the last matrix (see `Factor`)."""
+        x, _ = lapack.dpbtrs(self._factor, rhs[self.order], lower=1)
         out = np.empty_like(rhs)
         out[self.order] = x
         return out
@@ -101,27 +126,146 @@ class SparseLDL:
         upper = sp.triu(full, format="csc")
         self._take = upper.data.astype(np.int64) - 1
         self._upper = upper
+        self._diagonal = pattern.diagonal
         self._solver: Any = None
 
     def solve(self, data: Array, rhs: Array) -> Array:
         """Return the solution (see `Factor`)."""
         import qdldl
 
+        _refuse_unless(data[self._diagonal].min() > 0.0)
         self._upper.data = data[self._take]
         if self._solver is None:
             self._solver = qdldl.Solver(self._upper, upper=True)
         else:
             self._solver.update(self._upper, upper=True)
-        x = np.asarray(self._solver.solve(rhs))
-        if not np.all(np.isfinite(x)):
-            raise ArithmeticError("the matrix of the step is singular")
+        return self.again(rhs)
+
+    def again(self, rhs: Array) -> Array:
+        """Return the solution for the last matrix (see `Factor`)."""
+        if rhs.ndim > 1:
+            return np.column_stack([self.again(column) for column in rhs.T])
+        x = np.asarray(self._solver.solve(np.ascontiguousarray(rhs)))
+        # LDL' carries on past a negative pivot, and copying the pivots out costs a tenth of the
+        # factorisation; the energy of the solution tells as much of what the right-hand side sees.
+        _refuse_unless(bool(np.all(np.isfinite(x))) and (x @ rhs > 0.0 or not rhs.any()))
         return x
 
 
+class Multigrid:
+    """Conjugate gradients with classical algebraic multigrid.
+
+    From step to step the matrix changes little: an old hierarchy takes a few iterations more and
+    saves its construction. It is renewed once those iterations add up to its price.
+    """
+
+    def __init__(self, pattern: Pattern):
+        self._pattern = pattern
+        self._levels: Any = None
+        self._fresh = self._excess = 0
+
+    def solve(self, data: Array, rhs: Array) -> Array:
+        """Return the solution (see `Factor`)."""
+        _refuse_unless(data[self._pattern.diagonal].min() > 0.0)
+        self._matrix = self._pattern.matrix(data)
+        kept = self._levels is not None and self._excess < PRICE_OF_HIERARCHY
+        if not kept:
+            self._renew()
+        try:
+            return self.again(rhs)
+        except ArithmeticError:
+            if not kept:
+                raise
+        self._renew()
+        return self.again(rhs)
+
+    def again(self, rhs: Array) -> Array:
+        """Return the solution for the last matrix (see `Factor`)."""
+        from pyamg.krylov import cg
+
+        if rhs.ndim > 1:
+            return np.column_stack([self.again(column) for column in rhs.T])
+        residuals: list[float] = []
+        with warnings.catch_warnings():
+            # The outcome says the same, and a run has no use for a warning.
+            warnings.simplefilter("ignore")
+            x, info = cg(
+                self._matrix,
+                np.ascontiguousarray(rhs),
+                tol=RESIDUAL,
+                maxiter=MOST_ITERATIONS,
+                M=self._levels.aspreconditioner(cycle="V"),
+                residuals=residuals,
+            )
+        _refuse_unless(info == 0 and bool(np.all(np.isfinite(x))))
+        iterations = len(residuals) - 1
+        self._fresh = self._fresh or iterations
+        self._excess += max(iterations - self._fresh, 0)
+        return np.asarray(x)
+
+    def _renew(self) -> None:
+        from pyamg import ruge_stuben_solver
+
+        # Aggregation sets up no faster here and takes a third more iterations.
+        self._levels = ruge_stuben_solver(self._matrix)
+        self._fresh = self._excess = 0
+
+
+def _refuse_unless(definite: bool) -> None:
+    if not definite:
+        raise ArithmeticError("the matrix of the step is not positive definite")
+
+
 def factor_for(pattern: Pattern) -> Factor:
-    """Return the solver that is fastest for a pattern: banded where the band is narrow."""
-    order = np.asarray(reverse_cuthill_mckee(pattern.matrix(np.ones(len(pattern.rows))), symmetric_mode=True))
+    """Return the solver that is fastest for a pattern, by its size and bandwidth."""
+    if pattern.size > MOST_FOR_FACTORS:
+        return Multigrid(pattern)
+    order = narrow_order(pattern)
+    return BandedCholesky(pattern, order) if _width(pattern, order) <= WIDEST_BAND else SparseLDL(pattern)
+
+
+def narrow_order(pattern: Pattern) -> np.ndarray:
+    """Return the unknowns in an order of small bandwidth.
+
+    Breadth first from a whole row of nodes at the far end. From a single node, as Cuthill and
+    McKee start, the fronts of a mesh of quadrilaterals fold round a corner and are twice as wide.
+    """
+    best = np.asarray(reverse_cuthill_mckee(pattern.matrix(np.ones(len(pattern.rows))), symmetric_mode=True))
+    order, start = best, np.array([0])
+    for _ in range(3):
+        order, last = _layers(pattern, order, start)
+        if len(order) < pattern.size:
+            # A body in several pieces: the walk saw only one.
+            return best
+        if _width(pattern, order) < _width(pattern, best):
+            best = order
+        start = np.arange(pattern.size - last, pattern.size)
+    return best
+
+
+def _layers(pattern: Pattern, order: np.ndarray, start: np.ndarray) -> tuple[np.ndarray, int]:
+    """Walk breadth first from the unknowns at places `start` of `order`, ties kept in that order.
+
+    Returns the new order and how many unknowns its last layer has.
+    """
+    size = pattern.size
+    place = np.empty_like(order)
+    place[order] = np.arange(size)
+    # One node more, joined to all that the walk starts from.
+    rows = np.concatenate([place[pattern.rows], np.full(len(start), size)])
+    columns = np.concatenate([place[pattern.columns], start])
+    graph = sp.csr_matrix((np.ones(len(rows)), (rows, columns)), shape=(size + 1, size + 1))
+    walk, parent = breadth_first_order(graph, size)
+    when = np.empty(size + 1, dtype=np.int64)
+    when[walk] = np.arange(len(walk))
+    parents = when[parent[walk[1:]]]
+    begin, end = 0, 1
+    while end < len(walk):
+        begin, end = end, 1 + int(np.searchsorted(parents, end))
+    return order[walk[1:]], end - begin
+
+
+def _width(pattern: Pattern, order: np.ndarray) -> int:
     place = np.empty_like(order)
     place[order] = np.arange(pattern.size)
-    width = int(np.max(np.abs(place[pattern.rows] - place[pattern.columns])))
-    return BandedCholesky(pattern, order) if width <= WIDEST_BAND else SparseLDL(pattern)
+    return int(np.max(np.abs(place[pattern.rows] - place[pattern.columns])))

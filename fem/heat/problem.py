@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -140,15 +140,42 @@ class HeatProblem:
         """
         body = self.body
         scale = body.scale(look.state)
-        data = g * body.stiffness(look.state, scale)
+        v = body.factor.solve(self._matrix(look, g, scale), -np.where(self.free, residual, 0.0))
+        return np.asarray(look.state.capacity / scale * v)
+
+    def _matrix(self, look: Look, g: float, scale: Array) -> Array:
+        """Return the matrix of a step along the pattern; rows of imposed nodes are those of 1."""
+        pattern = self.body.pattern
+        data = g * self.body.stiffness(look.state, scale)
         diagonal = (look.slope + g * look.exchange_slope) / scale
         if self._open is not None:
             data *= self._open
             diagonal = np.where(self.free, diagonal, 1.0)
-            residual = np.where(self.free, residual, 0.0)
-        data[body.pattern.diagonal] += diagonal
-        v = body.factor.solve(data, -residual)
-        return np.asarray(look.state.capacity / scale * v)
+        data[pattern.diagonal] += diagonal
+        return data
+
+    # What sensitivities ask for besides.
+
+    def leaving(self, time: float, T: Array) -> Array:
+        """Return the heat that leaves each node by exchange [W] at nodal temperatures [degC]."""
+        out = np.zeros(self.body.size)
+        for name, (nodes, area, _) in self._exposed.items():
+            out[nodes] += area * self.exchanges[name].flux(T[nodes], time - self.began)[0]
+        return out
+
+    def jacobian(self, look: Look, g: float, du: Array) -> Array:
+        """Return the exact change of ``stored - g rate`` [J] for changes of `u`, shape (n, m)."""
+        dT = du / look.state.capacity[:, None]
+        passed = look.exchange_slope[:, None] * dT
+        return look.slope[:, None] * dT + g * (passed - self.body.conduction_change(look.state, dT))
+
+    def factored(self, look: Look, g: float) -> Callable[[Array], Array]:
+        """Factorise the matrix of a step and return what solves with it, several sides at once."""
+        factor = self.body.factor
+        scale = self.body.scale(look.state)
+        first = np.zeros(self.body.size)
+        factor.solve(self._matrix(look, g, scale), first)
+        return factor.again
 
     def settle(self, stored: Array, look: Look) -> Array:
         """Return the `u` at which each node holds exactly `stored` [J], near a look.

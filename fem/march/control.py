@@ -62,8 +62,10 @@ class Stepping(BaseModel):
     ----------
     accuracy
         How large an error each step may make.
-    first_step, largest_step
-        Of each stage [s]; None to leave both to the march.
+    first_step
+        First step of each stage [s], such as "0.1 s"; chosen if left out.
+    largest_step
+        Largest step of each stage [s], such as "30 s"; only accuracy bounds it if left out.
 
     """
 

@@ -16,7 +16,7 @@ from fem.errors import RunFailure
 from fem.march.control import Control
 from fem.march.newton import Effort, solve
 from fem.march.problem import Problem
-from fem.march.step import Moment, Step, begin
+from fem.march.step import Moment, Step, begin, recurrence
 
 
 SMALLEST = 1e-9
@@ -133,24 +133,20 @@ def _attempt(
     now = history[-1]
     time = landing if landing is not None else now.time + size
     size = time - now.time
-    if len(history) > 1:
-        before = history[-2]
-        earlier = now.time - before.time
-        r = size / earlier
-        g = size * (1 + r) / (1 + 2 * r)
-        new, old = (1 + r) ** 2 / (1 + 2 * r), r * r / (1 + 2 * r)
-        known = new * now.stored - old * before.stored
-        known_carried = new * now.carried - old * before.carried
-        bend = (before.u - now.u + earlier * now.u_rate) / earlier**2
-        guess = now.u + size * now.u_rate + size**2 * bend
+    earlier = now.time - history[-2].time if len(history) > 1 else None
+    new, old, g = recurrence(size, earlier)
+    known, known_carried = new * now.stored, new * now.carried
+    guess = now.u + size * now.u_rate
+    share = 0.5
+    if earlier is not None:
+        before, r = history[-2], size / earlier
+        known = known - old * before.stored
+        known_carried = known_carried - old * before.carried
+        guess = guess + (size / earlier) ** 2 * (before.u - now.u + earlier * now.u_rate)
         # Errors of the corrector and of the parabola through value, slope and last value, both
         # in units of the third derivative.
         corrector, predictor = (1 + r) ** 2 / (r * (1 + 2 * r)), (1 + r) / r
         share = corrector / (corrector + predictor)
-    else:
-        g, known, known_carried = size, now.stored, now.carried
-        guess = now.u + size * now.u_rate
-        share = 0.5
     found = solve(problem, time, problem.impose(time, guess), known, g, control, effort)
     if found is None:
         return None
@@ -161,7 +157,7 @@ def _attempt(
     after = Moment(time, u, stored, carried, look.rate, look.passed, u_rate, look)
     gap = share * (u - guess) * look.stored_slope
     error = max(problem.mean_size(gap), problem.smooth_size(gap, now.look, look))
-    return Step(now, after, straight=len(history) == 1), error
+    return Step(now, after, earlier), error
 
 
 __all__ = ["Effort", "Moment", "Step", "begin", "march"]

@@ -45,11 +45,25 @@ class Moment:
 
 @dataclass(frozen=True, eq=False)
 class Step:
-    """An accepted step, and everything between its ends."""
+    """An accepted step, and everything between its ends.
+
+    Parameters
+    ----------
+    before, after
+        Its ends.
+    earlier
+        Length of the step before it [s]; None for the first after a start.
+
+    """
 
     before: Moment
     after: Moment
-    straight: bool
+    earlier: float | None
+
+    @property
+    def straight(self) -> bool:
+        """Whether the step is the first after a start."""
+        return self.earlier is None
 
     @property
     def size(self) -> float:
@@ -90,7 +104,24 @@ class Step:
             rates = np.where(free, a.rate, 0.0), np.where(free, b.rate, 0.0)
             stored = _hermite(s, self.size, a.stored, b.stored, *rates)
         u = problem.impose(time, problem.settle(stored, problem.look(time, u)))
-        return Step(a, begin(problem, time, u, carried), self.straight)
+        return Step(a, begin(problem, time, u, carried), self.earlier)
+
+
+def recurrence(size: float, earlier: float | None) -> tuple[float, float, float]:
+    """Return new, old and g of ``stored = new stored_n - old stored_n-1 + g rate``.
+
+    Variable-step BDF2, or backward Euler for a first step.
+
+    Parameters
+    ----------
+    size, earlier
+        Lengths of the step and of the one before it [s]; None for no step before.
+
+    """
+    if earlier is None:
+        return 1.0, 0.0, size
+    r = size / earlier
+    return (1 + r) ** 2 / (1 + 2 * r), r * r / (1 + 2 * r), size * (1 + r) / (1 + 2 * r)
 
 
 def begin(problem: Problem, time: float, u: Array, carried: Array) -> Moment:

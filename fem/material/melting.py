@@ -8,8 +8,8 @@ import numpy as np
 from pydantic import BaseModel, ConfigDict, model_validator
 
 from fem.curve import Curve
+from fem.errors import Problem, Refused
 from fem.material.material import Material
-from fem.material.mistakes import refuse
 from fem.quantity import (
     ABSOLUTE_ZERO,
     TEMPERATURE,
@@ -28,7 +28,16 @@ _REACH = 100.0  # how far the outer rows lie beyond the range [K]; they only car
 
 
 class Phase(BaseModel):
-    """Conductivity [W/m/K] and heat capacity [J/kg/K] of the solid or the liquid."""
+    """What the solid, or the liquid, conducts and stores.
+
+    Parameters
+    ----------
+    conductivity
+        Conductivity [W/m/K], such as "2.2 W/m/K".
+    heat_capacity
+        Heat capacity [J/kg/K], such as "2050 J/kg/K".
+
+    """
 
     model_config = ConfigDict(frozen=True, extra="forbid")
 
@@ -42,15 +51,17 @@ class Melting(BaseModel):
     Parameters
     ----------
     melting_point
-        [degC].
+        Temperature at which it melts [degC], such as "0 degC"; a start at this temperature is liquid.
     latent_heat
-        [J/kg], beyond the sensible heat of the range.
+        Latent heat [J/kg], beyond the sensible heat of the range.
     melting_range
-        Width over which it melts, centred on the melting point [K]; linear within.
+        Width over which it melts, centred on the melting point [K], such as "0.5 K"; linear within.
     density
-        Of both phases [kg/m3].
-    solid, liquid
-        Properties below and above the range.
+        Density of both phases [kg/m3].
+    solid
+        Properties below the melting range.
+    liquid
+        Properties above the melting range.
 
     """
 
@@ -68,10 +79,10 @@ class Melting(BaseModel):
     def _range_resolved(self) -> Melting:
         if self.melting_range < LEAST_RANGE:
             message = f"must be at least {LEAST_RANGE:.4g} K, got {self.melting_range:.4g} K"
-            refuse("melting", {"melting_range": message})
+            raise Refused([Problem("melting_range", message)])
         if self.melting_point - self.melting_range / 2.0 <= ABSOLUTE_ZERO:
             message = f"{self.melting_range:.4g} K about {self.melting_point:.4g} degC reaches absolute zero"
-            refuse("melting", {"melting_range": message})
+            raise Refused([Problem("melting_range", message)])
         return self
 
     def build(self) -> Material:

@@ -9,14 +9,23 @@ from pydantic import BaseModel, ConfigDict, ValidatorFunctionWrapHandler, WrapVa
 
 from fem.column import Column, holds
 from fem.curve import Curve
+from fem.errors import Problem, Refused
 from fem.material.material import Material
-from fem.material.mistakes import refuse
 from fem.material.table import falls
 from fem.quantity import ABSOLUTE_ZERO, CONDUCTIVITY, HEAT_CAPACITY, TEMPERATURE, Density, Kind
 
 
 class _Rows(BaseModel):
-    """A property against temperature: straight lines between rows, held beyond."""
+    """A property against temperature: straight lines between rows, held beyond.
+
+    Parameters
+    ----------
+    temperature
+        Temperatures of the rows, rising [degC].
+    value
+        The property at these temperatures.
+
+    """
 
     model_config = ConfigDict(frozen=True, extra="forbid")
 
@@ -25,12 +34,11 @@ class _Rows(BaseModel):
 
     @model_validator(mode="after")
     def _pairs(self) -> _Rows:
-        mistakes = {}
         if len(self.value) != len(self.temperature):
-            mistakes["value"] = f"has {len(self.value)} values, but temperature has {len(self.temperature)}"
-        elif (said := falls(self.temperature, TEMPERATURE)) is not None:
-            mistakes["temperature"] = said
-        refuse("property", mistakes)
+            message = f"has {len(self.value)} values, but temperature has {len(self.temperature)}"
+            raise Refused([Problem("value", message)])
+        if (said := falls(self.temperature, TEMPERATURE)) is not None:
+            raise Refused([Problem("temperature", said)])
         return self
 
 
@@ -46,7 +54,7 @@ class ConductivityRows(_Rows):
     value: Annotated[Column, holds(CONDUCTIVITY)]
 
 
-def _or_value(kind: Kind) -> WrapValidator:
+def _or_value(kind: Kind, table: type[_Rows]) -> WrapValidator:
     """Take a table as it is, and a single quantity as one row that is held everywhere."""
 
     def read(raw: Any, handler: ValidatorFunctionWrapHandler) -> Any:
@@ -55,7 +63,7 @@ def _or_value(kind: Kind) -> WrapValidator:
         value = {"unit": kind.unit, "values": [kind.read(raw)]}
         return handler({"temperature": {"unit": "degC", "values": [0.0]}, "value": value})
 
-    return WrapValidator(read)
+    return WrapValidator(read, json_schema_input_type=Annotated[float, kind] | table)
 
 
 class Plain(BaseModel):
@@ -64,9 +72,11 @@ class Plain(BaseModel):
     Parameters
     ----------
     density
-        [kg/m3].
-    heat_capacity, conductivity
-        A value, or ``{ temperature = {unit, values}, value = {unit, values} }``.
+        Density [kg/m3], such as "7900 kg/m3".
+    heat_capacity
+        Heat capacity [J/kg/K]: a value, or values against temperature.
+    conductivity
+        Conductivity [W/m/K]: a value, or values against temperature.
 
     """
 
@@ -74,8 +84,8 @@ class Plain(BaseModel):
 
     kind: Literal["plain"] = "plain"
     density: Density
-    heat_capacity: Annotated[HeatCapacityRows, _or_value(HEAT_CAPACITY)]
-    conductivity: Annotated[ConductivityRows, _or_value(CONDUCTIVITY)]
+    heat_capacity: Annotated[HeatCapacityRows, _or_value(HEAT_CAPACITY, HeatCapacityRows)]
+    conductivity: Annotated[ConductivityRows, _or_value(CONDUCTIVITY, ConductivityRows)]
 
     def build(self) -> Material:
         """Return the material; enthalpy 0 at 0 degC."""

@@ -9,11 +9,11 @@ from numpy.typing import NDArray
 from pydantic import BaseModel, ConfigDict, field_validator, model_validator
 
 from fem.curve import Curve
+from fem.errors import Problem, Refused
 from fem.material import components
 from fem.material.conductivity import LAWS, maxwell_eucken, parallel
 from fem.material.freezing import Solution
 from fem.material.material import Material
-from fem.material.mistakes import refuse, wrong
 from fem.quantity import Density, Factor, Share, Temperature
 
 Array = NDArray[np.float64]
@@ -41,15 +41,20 @@ class Recipe(BaseModel):
 
     Parameters
     ----------
-    sucrose, glucose, fructose, fat, protein, fibre, ash
-        By mass of the mix [%]. Only the sugars lower the freezing point: give it where salts,
-        acids or alcohol do too.
+    sucrose
+        By mass of the mix [%].
+    glucose, fructose
+        By mass of the mix [%], such as "2.4 %"; invert sugar is both in equal parts.
+    fat, protein, fibre, ash
+        By mass of the mix [%], such as "1 %"; does not lower the freezing point.
     air
-        By volume of the product as poured [%]; an overrun of 25 % is 20 % air.
+        By volume of the product as poured [%], such as "20 %"; an overrun of 25 % is 20 % air.
     freezing_point
-        As measured [degC]; so many moles are taken as dissolved that ice first appears there.
+        As measured [degC], such as "-1.6 degC"; so many moles are taken as dissolved that ice first
+        appears there. Give it where salts, acids or alcohol lower it too; computed from the sugars
+        if left out.
     density
-        Of the product as poured, air included [kg/m3]; computed if left out.
+        Density of the product as poured, air included [kg/m3]; computed if left out.
     conductivity_law
         How ice and solution share the heat: "levy", or one of the bounds "solution continuous"
         and "ice continuous".
@@ -57,7 +62,7 @@ class Recipe(BaseModel):
         Multiplies the conductivity at every temperature [-].
     ice_ends
         Below it no more ice forms [degC]: the solution left has become too stiff. About -32 to
-        -34 degC for sucrose, value from memory.
+        -34 degC for sucrose (value from memory), such as "-33 degC".
 
     """
 
@@ -82,14 +87,14 @@ class Recipe(BaseModel):
     @classmethod
     def _below_zero(cls, T: float | None) -> float | None:
         if T is not None and T >= 0.0:
-            raise wrong(f"must be below 0 degC, got {T:.4g} degC")
+            raise ValueError(f"must be below 0 degC, got {T:.4g} degC")
         return T
 
     @field_validator("freezing_point")
     @classmethod
     def _not_water(cls, T: float | None) -> float | None:
         if T is not None and T > NEAREST_FREEZING_POINT:
-            raise wrong(
+            raise ValueError(
                 f"must be at most {NEAREST_FREEZING_POINT:.4g} degC, got {T:.4g} degC; "
                 'what freezes so near 0 degC is water: use kind = "melting"'
             )
@@ -99,7 +104,7 @@ class Recipe(BaseModel):
     @classmethod
     def _not_foam(cls, air: float) -> float:
         if air > MOST_AIR:
-            raise wrong(
+            raise ValueError(
                 f"must be at most {MOST_AIR:.4g} % of the volume, got {air:.4g} %; "
                 "air is the share of the product's volume: an overrun of 100 % is 50 % air"
             )
@@ -110,26 +115,28 @@ class Recipe(BaseModel):
         shares = {name: getattr(self, name) for name in SOLIDS if getattr(self, name)}
         listed = " + ".join(f"{name} {share:.4g} %" for name, share in shares.items())
         total, sugar = sum(shares.values()), sum(getattr(self, name) for name in SUGARS)
-        mistakes: dict[str, str] = {}
         if total >= 100.0:
-            mistakes[max(shares, key=lambda name: shares[name])] = (
+            largest = max(shares, key=lambda name: shares[name])
+            message = (
                 f"{listed} make {total:.4g} % by mass; together they must stay below 100 %, the rest is water"
             )
-        elif sugar == 0.0 and self.freezing_point is None:
-            mistakes[""] = (
+            raise Refused([Problem(largest, message)])
+        if sugar == 0.0 and self.freezing_point is None:
+            message = (
                 "has no sugar and no freezing_point; give sucrose, glucose or fructose by mass, or a "
                 'freezing_point. Pure water melts at one temperature: use kind = "melting"'
             )
-        elif 0.0 < sugar < LEAST_SUGAR and self.freezing_point is None:
+            raise Refused([Problem("", message)])
+        if 0.0 < sugar < LEAST_SUGAR and self.freezing_point is None:
             name = next(name for name in SUGARS if getattr(self, name))
-            mistakes[name] = _too_little(name, getattr(self, name), sugar)
-        elif (T_f := self._solution().freezing_point) <= self.ice_ends + 0.1:
+            raise Refused([Problem(name, _too_little(name, getattr(self, name), sugar))])
+        if (T_f := self._solution().freezing_point) <= self.ice_ends + 0.1:
             key = "ice_ends" if self.freezing_point is None else "freezing_point"
-            mistakes[key] = (
+            message = (
                 f"ice would first appear at {T_f:.4g} degC, but no ice forms below ice_ends = "
                 f"{self.ice_ends:.4g} degC; the mix would never freeze"
             )
-        refuse("recipe", mistakes, shares)
+            raise Refused([Problem(key, message)])
         return self
 
     def build(self) -> Material:

@@ -7,14 +7,22 @@ from typing import Annotated, Any, Literal, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
-from pydantic import AfterValidator, BaseModel, ConfigDict, PlainValidator, ValidationInfo, model_validator
+from pydantic import (
+    AfterValidator,
+    BaseModel,
+    ConfigDict,
+    Field,
+    PlainValidator,
+    ValidationInfo,
+    WithJsonSchema,
+    model_validator,
+)
 from pydantic_core import PydanticCustomError
 
 from fem.column import Column, csv_headings, holds, read_csv_columns
 from fem.curve import Curve
-from fem.errors import unknown
+from fem.errors import Problem, Refused, unknown
 from fem.material.material import Material
-from fem.material.mistakes import refuse, wrong
 from fem.quantity import CONDUCTIVITY, SHARE, TEMPERATURE, Density, Kind, Temperature
 
 Array = NDArray[np.float64]
@@ -60,7 +68,7 @@ def _read_file(raw: Any, info: ValidationInfo) -> Enclosed | None:
     if raw is None or isinstance(raw, Enclosed):
         return raw
     if not isinstance(raw, (str, Path)):
-        raise wrong(f'must be the name of a CSV file, such as "mix.csv", got {raw!r}')
+        raise ValueError(f'must be the name of a CSV file, such as "mix.csv", got {raw!r}')
     folder = (info.context or {}).get("folder") or Path()
     path = Path(folder) / raw
     try:
@@ -71,15 +79,19 @@ def _read_file(raw: Any, info: ValidationInfo) -> Enclosed | None:
                 raise ValueError(f"{path.name}: {unknown('column', name, known)}")
         columns = read_csv_columns(path)
     except ValueError as error:
-        raise wrong(str(error)) from error
+        raise ValueError(str(error)) from error
     for name, column in columns.items():
         try:
             _kind(name, column)
         except PydanticCustomError as error:
-            raise wrong(f"{path.name}, {name}: {error.message()}") from error
+            raise ValueError(f"{path.name}, {name}: {error.message()}") from error
     if (said := _wrong_rows(columns)) is not None:
-        raise wrong(f"{path.name}: {said[1]}")
+        raise ValueError(f"{path.name}: {said[1]}")
     return Enclosed(path, columns)
+
+
+_ENTHALPY = Field(title="list of enthalpy", examples=[{"unit": "kJ/kg", "values": [-250]}])
+_FILE = WithJsonSchema({"title": "file", "type": "string", "examples": ["mix.csv"]})
 
 
 class Table(BaseModel):
@@ -91,20 +103,20 @@ class Table(BaseModel):
     Parameters
     ----------
     density
-        [kg/m3].
+        Density [kg/m3].
     freezing_point
-        Where ice first appears, if it is known [degC].
+        Where ice first appears, if it is known [degC], such as "-1.6 degC".
     temperature
-        Rising.
+        Temperatures of the rows, rising [degC].
     enthalpy
-        Rising; per mass or per volume.
+        Enthalpy at these temperatures, rising, per mass or per volume [J/kg].
     conductivity
-        Above 0.
+        Conductivity at these temperatures [W/m/K].
     ice
-        Share of the mass, 0 to 100 %; optional.
+        Ice at these temperatures, by mass [%]; not known if left out.
     file
-        A CSV file with these columns instead, headed ``temperature [degC]``; relative to the
-        case file.
+        A CSV file with these columns instead, each headed by its name and, in square brackets, its
+        unit; looked for beside the case file.
 
     """
 
@@ -114,33 +126,29 @@ class Table(BaseModel):
     density: Density
     freezing_point: Temperature | None = None
     temperature: Annotated[Column, holds(TEMPERATURE)] | None = None
-    enthalpy: Annotated[Column, AfterValidator(_is_enthalpy)] | None = None
+    enthalpy: Annotated[Column, AfterValidator(_is_enthalpy), _ENTHALPY] | None = None
     conductivity: Annotated[Column, holds(CONDUCTIVITY)] | None = None
     ice: Annotated[Column, holds(SHARE)] | None = None
-    file: Annotated[Enclosed | None, PlainValidator(_read_file)] = None
+    file: Annotated[Enclosed | None, PlainValidator(_read_file), _FILE] = None
 
     @model_validator(mode="after")
     def _rows_fit(self) -> Table:
         listed = [name for name in COLUMNS if getattr(self, name) is not None]
         missing = [name for name in NEEDED if name not in listed]
-        mistakes: dict[str, str] = {}
         if self.file is not None and listed:
-            mistakes["file"] = (
-                f"stands beside {', '.join(listed)}; give the rows as a file or as lists, not both"
-            )
-        elif self.file is None and missing:
-            mistakes[""] = (
-                f"{', '.join(missing)} not given; a table needs {', '.join(NEEDED)} as lists, or a file"
-            )
-        elif (said := _wrong_rows(self._columns())) is not None:
-            mistakes[said[0]] = said[1]
-        elif self.freezing_point is not None:
+            message = f"stands beside {', '.join(listed)}; give the rows as a file or as lists, not both"
+            raise Refused([Problem("file", message)])
+        if self.file is None and missing:
+            message = f"{', '.join(missing)} not given; a table needs {', '.join(NEEDED)} as lists, or a file"
+            raise Refused([Problem("", message)])
+        if (said := _wrong_rows(self._columns())) is not None:
+            raise Refused([Problem(*said)])
+        if self.freezing_point is not None:
             T = self._columns()["temperature"].in_unit(TEMPERATURE)
             if not T[0] <= self.freezing_point <= T[-1]:
-                mistakes["freezing_point"] = (
-                    f"{self.freezing_point:.6g} degC is outside the rows, {T[0]:.6g} to {T[-1]:.6g} degC"
-                )
-        refuse("table", mistakes)
+                rows = f"{T[0]:.6g} to {T[-1]:.6g} degC"
+                message = f"{self.freezing_point:.6g} degC is outside the rows, {rows}"
+                raise Refused([Problem("freezing_point", message)])
         return self
 
     def build(self) -> Material:

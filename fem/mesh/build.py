@@ -10,7 +10,7 @@ import numpy as np
 import skfem
 
 from fem.mesh.domain import Array, Domain
-from fem.mesh.shape import Bar, Ring, Rod, Shape, Slab
+from fem.mesh.shape import Bar, MeshShape, Ring, Rod, Shape, Slab
 
 # Every mapping is exact in area; beyond rounding it is a mistake of the mapping.
 AREA_TOLERANCE = 1e-9
@@ -22,7 +22,7 @@ def build(shape: Shape, length: float | None) -> Domain:
     Parameters
     ----------
     shape
-        Any form but a mesh file (see `fem.mesh.read`).
+        Any form; a mesh file's was read with it.
     length
         Length of a plane piece along the normal [m]; None where axisymmetric.
 
@@ -31,16 +31,16 @@ def build(shape: Shape, length: float | None) -> Domain:
     The domain, its area asserted against the shape's own.
 
     """
+    if isinstance(shape, MeshShape):
+        return shape.file.domain(shape.length_unit, length)
     if isinstance(shape, Bar):
         domain = _bar(shape, length or 1.0)
     elif isinstance(shape, Slab):
         domain = _rectangle(shape, (0.0, shape.thickness), shape.width, length or 1.0)
     elif isinstance(shape, Rod):
         domain = _rectangle(shape, (0.0, shape.radius), shape.height, None)
-    elif isinstance(shape, Ring):
-        domain = _rectangle(shape, (shape.inner, shape.outer), shape.height, None)
     else:
-        raise TypeError(f"no mesh is built for the form {shape.form!r}")
+        domain = _rectangle(shape, (shape.inner, shape.outer), shape.height, None)
     for region, area in shape.areas().items():
         meshed = domain.areas[region]
         if abs(meshed - area) > AREA_TOLERANCE * area:

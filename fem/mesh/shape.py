@@ -4,11 +4,21 @@ from __future__ import annotations
 
 import math
 from abc import ABC, abstractmethod
+from pathlib import Path
 from typing import Annotated, Any, ClassVar, Literal, Self
 
-from pydantic import BaseModel, ConfigDict, Field, PlainValidator, model_validator
+from pydantic import (
+    BaseModel,
+    ConfigDict,
+    Field,
+    PlainValidator,
+    ValidationInfo,
+    WithJsonSchema,
+    model_validator,
+)
 
 from fem.errors import Problem, Refused
+from fem.mesh.grid import Grid
 from fem.quantity import Kind, Length
 
 CELLS_ACROSS = 44
@@ -38,7 +48,33 @@ def _read_length_unit(raw: Any) -> float:
     return CELL.read(f"1 {raw}" if isinstance(raw, str) and raw[:1].isalpha() else raw)
 
 
-Cell = Annotated[tuple[float, float], PlainValidator(_read_cell)]
+def _read_mesh(raw: Any, info: ValidationInfo) -> Grid:
+    if isinstance(raw, Grid):
+        return raw
+    if not isinstance(raw, (str, Path)) or not str(raw):
+        raise ValueError(f'must be the name of a mesh file, such as "bar.msh", got {raw!r}')
+    from fem.mesh.read import read
+
+    return read(Path((info.context or {}).get("folder") or Path()) / raw)
+
+
+_CELLS = {"type": "array", "items": CELL.described(), "minItems": 2, "maxItems": 2}
+Cell = Annotated[
+    tuple[float, float],
+    PlainValidator(_read_cell),
+    WithJsonSchema(
+        {
+            "title": "length, or two: across and along",
+            "anyOf": [CELL.described(), _CELLS],
+            "examples": [CELL.example],
+        }
+    ),
+]
+LengthUnit = Annotated[
+    float,
+    PlainValidator(_read_length_unit),
+    WithJsonSchema({"title": "unit of length", "type": "string", "examples": ["mm"]}),
+]
 
 
 class Form(BaseModel, ABC):
@@ -47,8 +83,8 @@ class Form(BaseModel, ABC):
     Parameters
     ----------
     cell
-        Target cell sizes across (x, r) and along (y, z) [m], given as one or as a pair; None for
-        `default_cell`.
+        Target size of the cells [m], or two sizes: across (x, r) and along (y, z); chosen from the
+        smallest dimension if left out.
 
     """
 
@@ -96,8 +132,10 @@ class Slab(Form):
 
     Parameters
     ----------
-    thickness, width
-        Extent in x and in y [m].
+    thickness
+        Extent in x [m].
+    width
+        Extent in y [m], such as "50 mm".
 
     """
 
@@ -138,8 +176,10 @@ class Rod(Form):
 
     Parameters
     ----------
-    radius, height
-        Extent in r and in z [m].
+    radius
+        Extent in r [m], such as "14 mm".
+    height
+        Extent in z [m], such as "180 mm".
 
     """
 
@@ -180,10 +220,12 @@ class Ring(Form):
 
     Parameters
     ----------
-    inner, outer
-        Radii [m].
+    inner
+        Radius of the hole [m], such as "6 mm".
+    outer
+        Radius of the piece [m], such as "20 mm".
     height
-        Extent in z [m].
+        Extent in z [m], such as "60 mm".
 
     """
 
@@ -230,12 +272,14 @@ class Bar(Form):
 
     Parameters
     ----------
-    thickness, width
-        Extent of the product in x and in y [m].
+    thickness
+        Extent of the product in x [m].
+    width
+        Extent of the product in y [m], such as "50 mm".
     corner
         Radius of the product's corners [m].
     wall
-        Thickness of the mould wall [m]; None for no wall.
+        Thickness of the mould wall around the product [m], such as "0.8 mm"; no wall if left out.
 
     """
 
@@ -302,27 +346,41 @@ class MeshShape(BaseModel):
     Parameters
     ----------
     file
-        Path, relative to the case file.
+        Path, relative to the case file; read at once, so that a mistake in it is one of the case.
     length_unit
-        What the file's coordinates are in; in metres when read ("1 mm" or "mm" gives 0.001).
+        What the file's coordinates are in: "mm", or a length that stands for it, "1 mm" [m].
 
     """
 
-    model_config = ConfigDict(frozen=True, extra="forbid")
+    model_config = ConfigDict(frozen=True, extra="forbid", arbitrary_types_allowed=True)
     section: ClassVar[None] = None
 
     form: Literal["mesh"] = "mesh"
-    file: Annotated[str, Field(min_length=1)]
-    length_unit: Annotated[float, PlainValidator(_read_length_unit)]
+    file: Annotated[Grid, PlainValidator(_read_mesh, json_schema_input_type=str), Field(examples=["bar.msh"])]
+    length_unit: LengthUnit
 
-    def surfaces(self) -> None:
-        """Return None: known once the file has been read."""
+    @model_validator(mode="after")
+    def _size_is_likely(self) -> Self:
+        if (said := self.file.unlikely(self.length_unit)) is not None:
+            raise Refused([Problem("length_unit", said)])
+        return self
 
-    def regions(self) -> None:
-        """Return None: known once the file has been read."""
+    def surfaces(self) -> tuple[str, ...] | None:
+        """Return the names of the surfaces; None where the file could not be read."""
+        return tuple(self.file.surfaces) if self._was_read else None
 
-    def box(self) -> None:
-        """Return None: known once the file has been read."""
+    def regions(self) -> tuple[str, ...] | None:
+        """Return the names of the regions; None where the file could not be read."""
+        return tuple(self.file.regions) if self._was_read else None
+
+    def box(self) -> Box:
+        """Return the lower left and the upper right corner of the section as drawn [m]."""
+        return self.file.box(self.length_unit)
+
+    @property
+    def _was_read(self) -> bool:
+        # A case with other mistakes is checked with what it says, unread, in this place.
+        return isinstance(getattr(self, "file", None), Grid)
 
 
 Shape = Slab | Rod | Ring | Bar | MeshShape

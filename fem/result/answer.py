@@ -7,15 +7,18 @@ from typing import Any
 UNFINISHED = "running"
 
 
-def sentence(summary: dict[str, Any]) -> str:
+def sentence(summary: dict[str, Any], *, with_place: bool = False) -> str:
     """Return the answer in one sentence.
 
     Parameters
     ----------
     summary
         As in ``summary.json``.
+    with_place
+        Whether it says where the slowest point is.
 
     """
+    place = f", at {_place(summary)}," if with_place else ""
     outcome = summary.get("outcome")
     aim = summary.get("aim")
     if outcome == UNFINISHED:
@@ -24,8 +27,9 @@ def sentence(summary: dict[str, Any]) -> str:
         return f"The run {outcome} at {duration(summary['time_s'])}: {summary['why']}."
     if aim is None:
         slowest = summary["slowest"]
-        return f"After {duration(summary['time_s'])} the slowest point is at {slowest['temperature_degC']:.1f} degC."
-    who = "The slowest point" if aim["at"] == "slowest" else f'The point "{aim["at"]}"'
+        temperature = f"{slowest['temperature_degC']:.1f} degC"
+        return f"After {duration(summary['time_s'])} the slowest point{place} is at {temperature}."
+    who = f"The slowest point{place}" if aim["at"] == "slowest" else f'The point "{aim["at"]}"'
     reach = f"{aim['reach_degC']:g} degC"
     if aim["time_s"] is None:
         last = summary["slowest"]["temperature_degC"]
@@ -34,6 +38,11 @@ def sentence(summary: dict[str, Any]) -> str:
             text += f": it ends at {last:.1f} degC"
         return text + (f"; no, {duration(aim['within_s'])} is not enough." if aim["within_s"] else ".")
     return f"{who} reaches {reach} after {duration(aim['time_s'])}{_verdict(aim)}."
+
+
+def _place(summary: dict[str, Any]) -> str:
+    x, y = (1e3 * value for value in summary["slowest"]["at_m"][:2])
+    return f"({x:.1f}, {y:.1f}) mm"
 
 
 def _verdict(aim: dict[str, Any]) -> str:
@@ -53,8 +62,7 @@ def details(summary: dict[str, Any]) -> list[tuple[str, str]]:
     lines: list[tuple[str, str]] = []
     slowest = summary.get("slowest")
     if slowest:
-        x, y = (1e3 * value for value in slowest["at_m"])
-        place = f"({x:.1f}, {y:.1f}) mm, at {slowest['temperature_degC']:.1f} degC when the run ended"
+        place = f"{_place(summary)}, at {slowest['temperature_degC']:.1f} degC when the run ended"
         lines.append(("slowest point", place))
     for region, heat in summary.get("heat_J", {}).items():
         mass = summary["mass_kg"][region]
@@ -67,7 +75,8 @@ def details(summary: dict[str, Any]) -> list[tuple[str, str]]:
         )
         lines.append((f"stage {stage['name']}", text))
     if "energy_imbalance" in summary:
-        text = f"heat through the surfaces and heat given up agree to {abs(summary['energy_imbalance']):.0e} of it"
+        off = f"{abs(summary['energy_imbalance']):.0e}"
+        text = f"heat through the surfaces and heat given up agree to {off} of it"
         lines.append(("ledger", text))
     effort = summary.get("effort")
     if effort:

@@ -5,7 +5,6 @@ from __future__ import annotations
 import csv
 import json
 import logging
-import os
 import shutil
 from collections.abc import Mapping
 from dataclasses import dataclass, field
@@ -16,6 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fem.errors import CaseError, Problem
+from fem.result.disk import naming, replace
 
 Array = NDArray[np.float64]
 SUMMARY = "summary.json"
@@ -56,21 +56,24 @@ class Table:
         self.rows.append(row)
         if self._path is None:
             return
-        if self._file is None:
-            self._file = self._path.open("w", newline="", encoding="utf-8")
-            self._writer = csv.writer(self._file, lineterminator="\n")
-            self._writer.writerow(row)
-        self._writer.writerow("" if value is None else f"{value:.9g}" for value in row.values())
+        with naming(self._path):
+            if self._file is None:
+                self._file = self._path.open("w", newline="", encoding="utf-8")
+                self._writer = csv.writer(self._file, lineterminator="\n")
+                self._writer.writerow(row)
+            self._writer.writerow("" if value is None else f"{value:.9g}" for value in row.values())
 
     def flush(self) -> None:
         """Hand what was written to the system, so that a kill loses nothing."""
-        if self._file is not None:
-            self._file.flush()
+        if self._file is not None and self._path is not None:
+            with naming(self._path):
+                self._file.flush()
 
     def close(self) -> None:
         """Close the file."""
-        if self._file is not None:
-            self._file.close()
+        if self._file is not None and self._path is not None:
+            with naming(self._path):
+                self._file.close()
             self._file = None
 
     def columns(self) -> dict[str, Array]:
@@ -130,9 +133,7 @@ class RunFolder:
         """Replace ``summary.json`` as a whole: a reader never meets half of one."""
         self.curves.flush()
         self.fronts.flush()
-        part = self.path / (SUMMARY + ".part")
-        part.write_text(json.dumps(summary, indent=2, ensure_ascii=False) + "\n", encoding="utf-8")
-        os.replace(part, self.path / SUMMARY)  # noqa: PTH105 - the atomic one
+        replace(self.path / SUMMARY, json.dumps(summary, indent=2, ensure_ascii=False) + "\n")
 
     def close(self) -> None:
         """Close every file."""
@@ -177,7 +178,7 @@ def open_run(path: str | Path) -> Result:
             raise ValueError("not an object")
     except FileNotFoundError:
         raise CaseError(str(path), [Problem("folder", f"is no run folder: it holds no {SUMMARY}")]) from None
-    except (OSError, ValueError) as error:
+    except (OSError, ValueError, RecursionError) as error:
         raise CaseError(str(path), [Problem(SUMMARY, f"cannot be read: {error}")]) from error
     return Result(summary, _read_table(folder / "curves.csv"), _read_table(folder / "fronts.csv"), folder)
 
@@ -186,14 +187,14 @@ def _read_table(path: Path) -> dict[str, Array]:
     """Read the whole rows of a table; a kill may have left half of the last one."""
     if not path.exists():
         return {}
-    with path.open(newline="", encoding="utf-8") as file:
-        rows = list(csv.reader(file))
+    try:
+        with path.open(newline="", encoding="utf-8") as file:
+            rows = list(csv.reader(file))
+        whole = [[float(v) if v else np.nan for v in row] for row in rows[1:] if len(row) == len(rows[0])]
+    except (OSError, ValueError, csv.Error) as error:
+        raise CaseError(str(path.parent), [Problem(path.name, f"cannot be read: {error}")]) from error
     if not rows:
         return {}
-    try:
-        whole = [[float(v) if v else np.nan for v in row] for row in rows[1:] if len(row) == len(rows[0])]
-    except ValueError as error:
-        raise CaseError(str(path.parent), [Problem(path.name, f"cannot be read: {error}")]) from error
     values = np.array(whole, dtype=float).reshape(-1, len(rows[0]))
     return dict(zip(rows[0], values.T, strict=True))
 

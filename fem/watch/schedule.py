@@ -6,7 +6,15 @@ import re
 from dataclasses import dataclass
 from typing import Annotated, Any, Literal, Self
 
-from pydantic import AfterValidator, BaseModel, ConfigDict, Field, PlainValidator, model_validator
+from pydantic import (
+    AfterValidator,
+    BaseModel,
+    ConfigDict,
+    Field,
+    PlainValidator,
+    WithJsonSchema,
+    model_validator,
+)
 
 from fem.errors import Problem, Refused
 from fem.quantity import COORDINATE, SHARE, TEMPERATURE, Duration
@@ -80,7 +88,37 @@ def _check_name(name: str) -> str:
     return name
 
 
-Point = Annotated[tuple[float, float], PlainValidator(_read_point)]
+Point = Annotated[
+    tuple[float, float],
+    PlainValidator(_read_point),
+    WithJsonSchema(
+        {
+            "title": "two lengths",
+            "type": "array",
+            "items": COORDINATE.described(),
+            "minItems": 2,
+            "maxItems": 2,
+            "examples": [["11 mm", "0 mm"]],
+        }
+    ),
+]
+Front = Annotated[
+    Level,
+    PlainValidator(Level.read),
+    WithJsonSchema(
+        {
+            "title": _FRONTS,
+            "type": "string",
+            "anyOf": [
+                {"const": "freezing point"},
+                {"pattern": TEMPERATURE.described()["pattern"]},
+                {"pattern": "^ice "},
+            ],
+            "default": "freezing point",
+            "examples": ["-3 degC"],
+        }
+    ),
+]
 Name = Annotated[str, AfterValidator(_check_name)]
 
 
@@ -90,7 +128,7 @@ class Ray(BaseModel):
     Parameters
     ----------
     from_
-        First point, distances count from here [m]; ``from`` in the case file.
+        First point [m]; distances count from here.
     to
         Last point [m].
 
@@ -99,7 +137,7 @@ class Ray(BaseModel):
     model_config = ConfigDict(frozen=True, extra="forbid")
 
     from_: Point = Field(alias="from")
-    to: Point
+    to: Point = Field(examples=[["0 mm", "0 mm"]])
 
     @model_validator(mode="after")
     def _has_length(self) -> Self:
@@ -114,15 +152,18 @@ class Watch(BaseModel):
     Parameters
     ----------
     every
-        Time between rows of the curves [s].
+        Time between rows of the curves [s], such as "5 s".
     frames
-        Time between frames of the fields [s].
+        Time between frames of the fields [s], such as "60 s".
+    fields
+        What they are written as: "vtu", a file for each frame, readable while the run goes on;
+        "vtkhdf", all frames in one file (needs h5py); or "none".
     front
-        What counts as the front.
+        What counts as the front: its position is measured along the rays.
     points
-        Name -> coordinates [m], in the whole piece.
+        Places whose temperature is recorded: name and coordinates [m], anywhere in the whole piece.
     rays
-        Name -> line.
+        Lines along which the front is measured, by name.
 
     """
 
@@ -130,6 +171,7 @@ class Watch(BaseModel):
 
     every: Duration = 5.0
     frames: Duration = 60.0
-    front: Annotated[Level, PlainValidator(Level.read)] = Level("freezing point")
+    fields: Literal["vtu", "vtkhdf", "none"] = "vtu"
+    front: Front = Level("freezing point")
     points: dict[Name, Point] = {}
     rays: dict[Name, Ray] = {}

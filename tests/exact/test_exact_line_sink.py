@@ -10,6 +10,8 @@ from math import nan, pi
 
 import numpy as np
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
 from fem.exact import LineSink, RangeFreezing, SharpFreezing
 
@@ -85,6 +87,19 @@ def test_the_flux_is_that_of_the_temperature_in_every_zone():
     r, d = np.array([3e-3, 7e-3, 15e-3]), 1e-7
     slope = (exact.temperature(r + d, 600.0) - exact.temperature(r - d, 600.0)) / (2 * d)
     assert exact.flux(r, 600.0) == pytest.approx(k * slope, rel=1e-6)
+
+
+@settings(max_examples=60, deadline=None)
+@given(Q=st.floats(5, 2000), superheat=st.floats(1e-9, 60), width=st.floats(1e-3, 10), k=st.floats(0.1, 5))
+def test_heat_balances_at_both_fronts_however_strong_the_sink(Q, superheat, width, k):
+    material = RangeFreezing(2.0, 2000, k, 3000, 0.55, 3900, 1050, 270e3, -2 - width, -2, share=0.2)
+    exact = LineSink(material, Q, -2 + superheat)
+    first, second = exact.zones.fronts
+    assert 0 < first < second
+    jump = exact.zones.slope_flux(np.array([first, first * (1 + 1e-13)]))
+    assert jump[0] - jump[1] == pytest.approx(2 * first * 0.2 * 270e3 * 1050, abs=1e-6 * Q / first)
+    at_second = exact.zones.slope_flux(np.array([second, second * (1 + 1e-13)]))
+    assert at_second[0] == pytest.approx(at_second[1], abs=1e-6 * Q / second)
 
 
 def test_it_holds_from_the_first_instant():

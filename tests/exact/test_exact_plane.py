@@ -161,7 +161,7 @@ def test_places_and_times_broadcast():
 
 @settings(max_examples=60, deadline=None)
 @given(
-    wall=st.floats(-200, -9),
+    wall=st.floats(-200, -9.01),
     superheat=st.floats(1e-6, 60),
     width=st.floats(1e-3, 7),
     latent=st.floats(1e3, 4e5),

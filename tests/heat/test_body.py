@@ -31,6 +31,13 @@ def test_assembled_surfaces_equal_those_from_the_edges_alone(shape, length) -> N
         np.testing.assert_allclose(forms.exposure(domain, name), domain.edge_areas(name), rtol=1e-12, atol=1e-18)
 
 
+@pytest.mark.parametrize("cell", ["0.2425 mm", "0.25 mm", "0.485 mm", "0.7 mm"])
+def test_only_nodes_of_a_surface_are_exposed_by_it(cell: str) -> None:
+    domain = build(slab(thickness="30 mm", width="2 mm", cell=cell), 1.0)
+    exposed = forms.exposure(domain, "left") > 0
+    np.testing.assert_array_equal(exposed, domain.points[0] == 0.0)
+
+
 def test_conduction_between_nodes_creates_no_heat() -> None:
     body = bar_body()
     rng = np.random.default_rng(3)

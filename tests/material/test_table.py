@@ -8,6 +8,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from pydantic import ValidationError
 
+from fem.case.wording import notes
 from fem.material import Material, Table
 
 ROWS = {
@@ -141,9 +142,9 @@ def test_rows_that_cannot_be_right_are_refused(
 ) -> None:
     with pytest.raises(ValidationError) as caught:
         table(**keys)
-    (error,) = caught.value.errors()
-    assert error["loc"] == place
-    assert said in error["msg"]
+    (note,) = notes(caught.value, Table, ())
+    assert note.path == place
+    assert said in note.message
 
 
 def test_a_file_beside_lists_is_refused(tmp_path: Path) -> None:
@@ -152,8 +153,9 @@ def test_a_file_beside_lists_is_refused(tmp_path: Path) -> None:
     )
     with pytest.raises(ValidationError) as caught:
         Table.model_validate(ROWS | {"file": "mix.csv"}, context={"folder": tmp_path})
-    assert caught.value.errors()[0]["loc"] == ("file",)
-    assert "not both" in caught.value.errors()[0]["msg"]
+    (note,) = notes(caught.value, Table, ())
+    assert note.path == ("file",)
+    assert "not both" in note.message
 
 
 @st.composite

@@ -8,8 +8,15 @@ import numpy as np
 import pytest
 from pydantic import ValidationError
 
+from fem.mesh.grid import Grid
 from fem.mesh.shape import CELLS_ACROSS, SHAPES, Bar, MeshShape, Ring, Rod, Slab
 
+SQUARE = Grid(
+    np.array([[0.0, 19.0, 19.0, 0.0], [0.0, 0.0, 19.0, 19.0]]),
+    np.array([[0], [1], [2], [3]]),
+    {"product": np.array([0])},
+    {"left": np.array([[0], [3]])},
+)
 BAR = {"thickness": "22 mm", "width": "50 mm", "corner": "6 mm", "wall": "0.8 mm"}
 
 
@@ -65,14 +72,17 @@ def test_names_of_surfaces_and_regions() -> None:
     assert Bar(**BAR).surfaces() == ("outside",)
     assert Bar(**BAR).regions() == ("product", "wall")
     assert Bar(thickness="22 mm", width="50 mm").regions() == ("product",)
-    mesh = MeshShape(file="pop.msh", length_unit="1 mm")
-    assert (mesh.surfaces(), mesh.regions(), mesh.box()) == (None, None, None)
+    mesh = MeshShape(file=SQUARE, length_unit="1 mm")
+    assert (mesh.surfaces(), mesh.regions()) == (("left",), ("product",))
+    assert mesh.box() == (pytest.approx((0.0, 0.0)), pytest.approx((0.019, 0.019)))
+    unread = MeshShape.model_construct(file="pop.msh", length_unit="1 mm")
+    assert (unread.surfaces(), unread.regions()) == (None, None)
     assert mesh.length_unit == pytest.approx(1e-3)
 
 
 @pytest.mark.parametrize("unit", ["mm", "1 mm", "inch"])
 def test_the_unit_of_a_mesh_file_is_a_word_or_a_length(unit: str) -> None:
-    assert MeshShape(file="pop.msh", length_unit=unit).length_unit == pytest.approx(
+    assert MeshShape(file=SQUARE, length_unit=unit).length_unit == pytest.approx(
         0.0254 if unit == "inch" else 0.001
     )
 
@@ -117,7 +127,7 @@ def test_a_cell_is_one_size_or_two_or_chosen() -> None:
         (Slab, {"thickness": "8 cm", "width": "8 cm", "cell": "1 um"}, r"cells; got 0.001 mm"),
         (Slab, {"thickness": "8 cm", "width": "1e-9 mm"}, r"cells"),
         (Slab, {"thickness": "8 cm", "width": "8 cm", "cell": ["1 mm"]}, r"one size or two"),
-        (MeshShape, {"file": "a.msh", "length_unit": "kg"}, r"no unit of length|cannot be read"),
+        (MeshShape, {"file": SQUARE, "length_unit": "kg"}, r"no unit of length|cannot be read"),
     ],
 )
 def test_impossible_dimensions_are_said_with_both_numbers(

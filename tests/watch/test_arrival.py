@@ -14,7 +14,7 @@ def step(a: float, b: float) -> Step:
         one = np.array([u])
         return Moment(t, one, one, np.zeros(0), one, np.zeros(0), np.array([-3e-3 * t * t]), None)
 
-    return Step(moment(10.0, 4.0 - 1.0), moment(20.0, 4.0 - 8.0), straight=False)
+    return Step(moment(10.0, 4.0 - 1.0), moment(20.0, 4.0 - 8.0), earlier=10.0)
 
 
 def measure(u: np.ndarray) -> float:
