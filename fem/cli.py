@@ -96,6 +96,41 @@ def report(folder: Path, into: Path | None) -> None:
 
 
 @rimefront.command()
+@_CASE
+@_SET
+@click.option("--json", "as_json", is_flag=True, help="Print it as JSON; text goes to standard error.")
+def check(case: Path, overrides: tuple[str, ...], as_json: bool) -> None:
+    """Read and mesh CASE and say what is known by hand; solve nothing."""
+    from fem.case.read import load
+    from fem.estimate.outlook import outlook
+    from fem.terminal import show_json, show_outlook
+
+    said = outlook(load(case, overrides))
+    if as_json:
+        show_json(said)
+    show_outlook(said, to_stderr=as_json)
+
+
+@rimefront.command()
+@_CASE
+@_SET
+@click.option("--json", "as_json", is_flag=True, help="Print it as JSON; text goes to standard error.")
+def refine(case: Path, overrides: tuple[str, ...], as_json: bool) -> None:
+    """Run CASE on three levels of cells and steps and say how far off its numbers are."""
+    from rich.console import Console
+
+    from fem.case.read import load
+    from fem.series.refine import refine as refine_case
+    from fem.terminal import show_json, show_refinement
+
+    with Console(stderr=True).status("") as status:
+        refined = refine_case(load(case, overrides), progress=status.update)
+    if as_json:
+        show_json(refined.as_dict())
+    show_refinement(refined, to_stderr=as_json)
+
+
+@rimefront.command()
 @click.option("--json", "as_json", is_flag=True, help="Print the lines as JSON.")
 def verify(as_json: bool) -> None:
     """Run the solver against exact solutions and print what each says, what ours is, and the error."""

@@ -9,10 +9,13 @@ import numpy as np
 
 from fem.case.case import Case, Stage
 from fem.curve import Array
+from fem.errors import CaseError, Problem
 from fem.heat.body import Body
 from fem.heat.exchange import Insulated
 from fem.march.control import Control
 from fem.mesh.build import build
+from fem.result.fields import check_format
+from fem.watch.record import Record
 
 # A logged signal has a row every few seconds: landing on each would cost more than it is worth.
 MOST_KNOTS = 50
@@ -57,6 +60,21 @@ class Plan:
         }
         return tuple(name for name in self.body.domain.surfaces if name in used)
 
+    def record(self) -> Record:
+        """Return the observers that the case asks for.
+
+        Raises
+        ------
+        CaseError
+            Where a watched place lies outside the piece, or fields cannot be written as asked.
+
+        """
+        try:
+            check_format(self.case.watch.fields)
+            return Record(self.body, self.case.watch, self.surfaces, self.cooling)
+        except ValueError as error:
+            raise CaseError(self.case.source, [Problem("watch", str(error))]) from error
+
     @cached_property
     def start(self) -> Array:
         """Enthalpy of each node's host at the start [J/m3]; a shared node starts as the product."""
@@ -64,7 +82,9 @@ class Plan:
         for region in reversed(list(self.body.domain.regions)):
             material = self.body.materials[region]
             part = next(p for p in self.body.parts if p.material is material)
-            here = np.intersect1d(np.flatnonzero(self.body.volumes[region] > 0), part.hosted)
+            here = np.zeros(self.body.size, dtype=bool)
+            here[part.hosted] = True
+            here &= self.body.volumes[region] > 0
             u[here] = material.start_enthalpy(self.case.piece.start_of(region))
         return u
 

@@ -6,15 +6,22 @@ import logging
 import time as clock
 from collections.abc import Callable, Iterator
 from pathlib import Path
+from typing import Any
+
+from threadpoolctl import threadpool_limits
 
 from fem.case.case import Case, Stage
 from fem.case.portable import portable
-from fem.errors import CaseError, Problem, RunFailure
+from fem.errors import RunFailure
+from fem.estimate.by_hand import estimates
+from fem.estimate.by_poisson import poisson
+from fem.estimate.numerical import numerical_error as error_from
+from fem.estimate.numerical import twin_of
+from fem.hangs_on import HangsOn
 from fem.heat.problem import HeatProblem
 from fem.march.march import Moment, Step, begin, march
 from fem.mesh.domain import Array
 from fem.plan import Plan
-from fem.result.fields import check_format
 from fem.result.folder import Result, RunFolder
 from fem.summary import Summary
 from fem.watch.arrival import Arrival
@@ -25,7 +32,13 @@ Progress = Callable[[float, Record, Moment], None]
 
 
 def run(
-    case: Case, folder: str | Path | None = None, *, overwrite: bool = False, progress: Progress | None = None
+    case: Case,
+    folder: str | Path | None = None,
+    *,
+    overwrite: bool = False,
+    progress: Progress | None = None,
+    ranges: bool = True,
+    numerical_error: bool = True,
 ) -> Result:
     """Run a case.
 
@@ -39,6 +52,11 @@ def run(
         Whether an earlier run's folder may be replaced.
     progress
         Called after each step with the time [s], the observers and the state.
+    ranges
+        Whether to carry along what the answer hangs on, and to give it a range.
+    numerical_error
+        Whether to run a coarse twin too, for about a fifth of the cost, and say how far off the
+        numbers are.
 
     Returns
     -------
@@ -56,19 +74,26 @@ def run(
     """
     started = clock.perf_counter()
     plan = Plan.of(case)
-    try:
-        check_format(case.watch.fields)
-        record = Record(plan.body, case.watch, plan.surfaces, plan.cooling)
-    except ValueError as error:
-        raise CaseError(case.source, [Problem("watch", str(error))]) from error
-    out = RunFolder(Path(folder), *portable(case.text, case.folder), overwrite) if folder is not None else None
-    summary = Summary(case, plan.body, plan.start, record, out, started, plan.cautions())
+    record = plan.record()
+    hangs_on = HangsOn.of(plan, record.gauge) if ranges and case.aim is not None else None
+    out = (
+        RunFolder(Path(folder), *portable(case.text, case.folder), overwrite) if folder is not None else None
+    )
+    expected = [*estimates(plan), poisson(plan)]
+    summary = Summary(case, plan.body, plan.start, record, out, started, plan.cautions(), expected)
     try:
         summary.begin()
-        for step in _steps(plan, record, summary):
-            if progress is not None:
-                progress(step.after.time, record, step.after)
-            summary.progress(step)
+        # Two threads of BLAS are slower than one on matrices of this size, at times a thousandfold.
+        with threadpool_limits(1):
+            for step in _steps(plan, record, summary, hangs_on):
+                if progress is not None:
+                    progress(step.after.time, record, step.after)
+                summary.progress(step)
+                if hangs_on is not None:
+                    hangs_on.see(step, summary.arrival)
+        summary.uncertainty = hangs_on.as_dict(summary.arrival) if hangs_on is not None else None
+        if numerical_error:
+            summary.numerical_error = _compared_with_twin(plan, summary)
         summary.end("finished", "every stage was run")
     except RunFailure as failure:
         failure.where = failure.where or plan.place_of(failure.unknown)
@@ -87,7 +112,18 @@ def run(
     return summary.result()
 
 
-def _steps(plan: Plan, record: Record, summary: Summary) -> Iterator[Step]:
+def _compared_with_twin(plan: Plan, summary: Summary) -> dict[str, Any]:
+    """Run the coarse twin of a case and return what it says of the case's own error."""
+    summary.marched()
+    try:
+        twin = run(twin_of(plan.case), ranges=False, numerical_error=False)
+    except RunFailure as failure:
+        said = f"not known: the coarse run that it is compared with failed {failure}"
+        return {"time_s": None, "heat_removed_J": None, "how": said}
+    return error_from(plan, summary.as_dict(), twin.summary)
+
+
+def _steps(plan: Plan, record: Record, summary: Summary, hangs_on: HangsOn | None) -> Iterator[Step]:
     """March through the stages, each from the last state of the one before."""
     time, u = 0.0, plan.start
     for stage in plan.case.stages:
@@ -99,11 +135,15 @@ def _steps(plan: Plan, record: Record, summary: Summary) -> Iterator[Step]:
             moment = begin(problem, time, u, plan.no_accounts(stage))
             landings = plan.landings(stage, time)
             control = plan.control(stage)
+            if hangs_on is not None:
+                hangs_on.begin_stage(stage, problem, moment)
             for step in march(problem, moment, ending.latest, landings, control, summary.effort, ending.stop):
                 for rows in record.see(problem, step, last=ending.met or step.after.time >= ending.latest):
                     summary.add(rows)
                 time, u = step.after.time, step.after.u
                 yield step
+            if hangs_on is not None:
+                hangs_on.end_stage(stage, step, ending.met)
         summary.end_stage(stage, time, u, ending.why, ending.met)
 
 

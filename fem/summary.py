@@ -18,6 +18,7 @@ from fem.result.folder import Result, RunFolder, Table
 from fem.watch.arrival import Arrival
 from fem.watch.ledger import imbalance
 from fem.watch.record import Record, Rows
+from fem.watch.schedule import SLOWEST
 
 log = logging.getLogger("fem.run")
 SECONDS_BETWEEN = 0.5
@@ -40,6 +41,8 @@ class Summary:
         Reading of the process's clock when the run began [s].
     cautions
         Sentences known before the first step.
+    estimates
+        Freezing times found without a march.
 
     """
 
@@ -52,14 +55,17 @@ class Summary:
         out: RunFolder | None,
         started: float,
         cautions: list[str],
+        estimates: list[dict[str, Any]],
     ):
         self.case, self.body, self.record, self.out = case, body, record, out
         self.effort = Effort()
         self.cautions = list(cautions)
+        self.estimates = estimates
         self.stages: list[dict[str, Any]] = []
         self.curves = out.curves if out else Table()
         self.fronts = out.fronts if out else Table()
         self._started, self._marched, self._written = started, clock.perf_counter(), 0.0
+        self._march_s: float | None = None
         self._heat = body.heat(start)
         self._u = start
         self._time = 0.0
@@ -74,6 +80,8 @@ class Summary:
             if self.arrival.lag(start) <= 0.0:
                 self.arrival.time = 0.0
         self.fields: Fields | None = None
+        self.uncertainty: dict[str, Any] | None = None
+        self.numerical_error: dict[str, Any] | None = None
 
     def begin(self) -> None:
         """Write the first word, and the fields at the start."""
@@ -121,10 +129,15 @@ class Summary:
         log.info("stage %s ended at %.6g s: %s", stage.name, time, why)
         self._write()
 
+    def marched(self) -> None:
+        """Take note that the march is over; what follows is not counted as its time."""
+        self._march_s = clock.perf_counter() - self._marched
+
     def end(self, outcome: str, why: str) -> None:
         """Write the last word."""
         self._state = {"outcome": outcome, "why": why}
         log.info("%s: %s", outcome, why)
+        self.cautions += self._surprises()
         if self.fields is not None:
             self.fields.end(self._time, self._u)
         self._write()
@@ -154,6 +167,8 @@ class Summary:
             "title": self.case.title,
             **self._state,
             "aim": self._aim(),
+            "uncertainty": self.uncertainty,
+            "numerical_error": self.numerical_error,
             "slowest": {
                 "at_m": [float(x) for x in self.body.domain.points[:, node]],
                 "temperature_degC": slowest,
@@ -165,9 +180,29 @@ class Summary:
             "time_s": self._time,
             "stages": self.stages,
             "effort": self._effort(),
+            "estimates": self._compared(),
             "cautions": self.cautions,
             "versions": versions(),
         }
+
+    def _compared(self) -> list[dict[str, Any]]:
+        """Return the estimates, with the run's own time over each where both are known."""
+        own = self.arrival.time if self.arrival is not None else None
+        if not own or self.case.aim is None or self.case.aim.at != SLOWEST:
+            return self.estimates
+        return [{**e, "ratio": own / e["time_s"]} if e["time_s"] else e for e in self.estimates]
+
+    def _surprises(self) -> list[str]:
+        """Say where the run leaves the band of an estimate that holds for its case."""
+        said = []
+        for e in self._compared():
+            ratio, (low, high) = e.get("ratio"), e.get("band", (0.0, float("inf")))
+            if ratio is not None and e["in_range"] and not low <= ratio <= high:
+                said.append(
+                    f"the time to the aim is {ratio:.2f} times the {e['method']} estimate, theory allows {low:g} to "
+                    f"{high:g}: look for a mistake in the case"
+                )
+        return said
 
     def _aim(self) -> dict[str, Any] | None:
         aim = self.case.aim
@@ -185,7 +220,7 @@ class Summary:
             "rejected": self.effort.rejected,
             "newton": self.effort.newton,
             "factorisations": self.effort.factorisations,
-            "march_s": round(now - self._marched, 4),
+            "march_s": round(now - self._marched if self._march_s is None else self._march_s, 4),
             "elapsed_s": round(now - self._started, 4),
         }
 

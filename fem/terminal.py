@@ -11,7 +11,7 @@ import click
 from rich.console import Console
 from rich.table import Table
 
-from fem.result.answer import details, duration, sentence
+from fem.result.answer import details, duration, ranking, sentence
 from fem.result.folder import Result
 
 if TYPE_CHECKING:
@@ -74,7 +74,7 @@ def show_json(summary: dict[str, Any]) -> None:
 
 def show_answer(result: Result, to_stderr: bool = False) -> None:
     """Print the answer: the sentence first, then what stands behind it."""
-    console = Console(stderr=to_stderr, highlight=False)
+    console = Console(stderr=to_stderr, highlight=False, markup=False)
     console.print(sentence(result.summary), style="bold", soft_wrap=True)
     console.print()
     table = Table.grid(padding=(0, 2))
@@ -87,6 +87,40 @@ def show_answer(result: Result, to_stderr: bool = False) -> None:
         if (page := result.folder / "report.html").exists():
             table.add_row("report", str(page))
     console.print(table)
+    show_ranking(console, result.summary)
+
+
+def show_outlook(said: dict[str, Any], to_stderr: bool = False) -> None:
+    """Print what is known of a case before it is run: the sentence first."""
+    from rich.text import Text
+
+    from fem.estimate import wording
+
+    console = Console(stderr=to_stderr, highlight=False, markup=False)
+    console.print(wording.sentence(said), style="bold", soft_wrap=True, markup=False)
+    console.print()
+    table = Table.grid(padding=(0, 2))
+    table.add_column(style="cyan", no_wrap=True)
+    table.add_column(overflow="fold")
+    for label, text in wording.details(said):
+        table.add_row(Text(label), Text(text), style="yellow" if label == "caution" else None)
+    console.print(table)
+
+
+def show_ranking(console: Console, summary: dict[str, Any]) -> None:
+    """Print what the time hangs on, the most important input first."""
+    rows = ranking(summary)
+    if not rows:
+        return
+    uncertainty = summary["uncertainty"]
+    console.print()
+    console.print(f"What the time hangs on, inputs as uncertain as {uncertainty['source']}:", style="cyan")
+    table = Table.grid(padding=(0, 1))
+    for name, half_width, bar, text in rows:
+        table.add_row(name, half_width, bar, text)
+    console.print(table)
+    for remark in uncertainty["remarks"]:
+        console.print(f"({remark})", style="yellow", soft_wrap=True)
 
 
 def show_verdicts(verdicts: Iterable[Any], as_json: bool) -> bool:
@@ -114,3 +148,26 @@ def show_verdicts(verdicts: Iterable[Any], as_json: bool) -> bool:
     if as_json:
         click.echo(json.dumps([verdict.as_dict() for verdict in lines], indent=2))
     return passed
+
+
+def show_refinement(refinement: Any, to_stderr: bool = False) -> None:
+    """Print each number of a refined case: as run, extrapolated, and how far off either may be."""
+    console = Console(stderr=to_stderr, highlight=False)
+    heads = ("number", "as run", "off by at most", "refined", "off by at most", "order")
+    table = Table(*heads, box=None, header_style="bold", pad_edge=False)
+    for n in refinement.numbers:
+        as_run, refined = (f"{value:.6g} {n.unit}" for value in (n.as_run, n.value))
+        order = "-" if n.order is None else f"{n.order:.1f}"
+        errors = (f"{error:.2g} {n.unit}" for error in (n.as_run_error, n.error))
+        table.add_row(n.quantity, as_run, next(errors), refined, next(errors), order)
+    console.print(table)
+    console.print()
+    for number, level in enumerate(refinement.levels, start=1):
+        cells = " x ".join(f"{1e3 * size:.3g}" for size in dict.fromkeys(level.cell_m))
+        text = f"level {number}: cells of {cells} mm, {level.nodes} nodes, {level.steps} steps, {level.elapsed_s:.1f} s"
+        console.print(text, soft_wrap=True)
+    for n in refinement.numbers:
+        if n.order is None:
+            console.print(
+                f"{n.quantity}: {n.why}; the bound is from the spread of the levels", soft_wrap=True
+            )

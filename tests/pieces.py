@@ -29,7 +29,13 @@ def material(entries: dict) -> Material:
 
 def bar(wall: str | None = "0.8 mm", cell: str = "2 mm", corner: str = "6 mm") -> Bar:
     return Bar.model_validate(
-        {"thickness": "22 mm", "width": "50 mm", "corner": corner, "cell": cell, **({"wall": wall} if wall else {})}
+        {
+            "thickness": "22 mm",
+            "width": "50 mm",
+            "corner": corner,
+            "cell": cell,
+            **({"wall": wall} if wall else {}),
+        }
     )
 
 

@@ -18,7 +18,9 @@ RIMEFRONT = (sys.executable, "-m", "fem.cli")
 
 
 def rimefront(*args: str, cwd: Path) -> subprocess.CompletedProcess[str]:
-    return subprocess.run([*RIMEFRONT, *args], cwd=cwd, capture_output=True, text=True, timeout=120, check=False)
+    return subprocess.run(
+        [*RIMEFRONT, *args], cwd=cwd, capture_output=True, text=True, timeout=120, check=False
+    )
 
 
 @pytest.fixture
@@ -77,7 +79,9 @@ def test_what_is_wrong_is_said_with_exit_2_and_nothing_is_written(
 
 
 def test_overrides_reach_the_case_in_the_folder(place: Path) -> None:
-    rimefront("run", "pop.toml", "--into", "out", "--set", "stages.freeze.surfaces.outside.h=400 W/m2/K", cwd=place)
+    rimefront(
+        "run", "pop.toml", "--into", "out", "--set", "stages.freeze.surfaces.outside.h=400 W/m2/K", cwd=place
+    )
     assert 'h = "400 W/m2/K"' in (place / "out" / "case.toml").read_text()
 
 
@@ -87,7 +91,10 @@ LONG = SMALL.replace('cell = "1.5 mm"', 'cell = "0.2 mm"').replace('lasts = "10 
 def started(place: Path) -> subprocess.Popen[bytes]:
     (place / "long.toml").write_text(LONG, encoding="utf-8")
     process = subprocess.Popen(
-        [*RIMEFRONT, "run", "long.toml", "--into", "out"], cwd=place, stdout=subprocess.DEVNULL, stderr=subprocess.DEVNULL
+        [*RIMEFRONT, "run", "long.toml", "--into", "out"],
+        cwd=place,
+        stdout=subprocess.DEVNULL,
+        stderr=subprocess.DEVNULL,
     )
     deadline = time.monotonic() + 60
     curves = place / "out" / "curves.csv"
@@ -130,7 +137,8 @@ def test_help_loads_nothing_heavy() -> None:
     code = (
         "import sys; from click.testing import CliRunner; from fem.cli import rimefront;"
         "assert CliRunner().invoke(rimefront, ['--help']).exit_code == 0;"
-        "heavy = {'numpy', 'scipy', 'skfem', 'pint', 'pydantic', 'rich', 'matplotlib', 'pyvista'} & set(sys.modules);"
+        "heavy = {'numpy', 'scipy', 'skfem', 'pint', 'pydantic', 'rich', 'matplotlib', 'pyvista'};"
+        "heavy &= set(sys.modules);"
         "assert not heavy, heavy"
     )
     subprocess.run([sys.executable, "-c", code], check=True, timeout=60)

@@ -102,12 +102,14 @@ air = "-18 degC"
 
 
 def test_a_hold_without_exchange_keeps_the_heat_and_evens_out_the_temperature() -> None:
-    hold = 'stages.hold.lasts=4 min'
+    hold = "stages.hold.lasts=4 min"
     text = SMALL.split("[watch]")[0] + '[[stages]]\nname = "hold"\nlasts = "1 min"\n'
     result = run(small("stages.freeze.lasts=100 s", hold, text=text))
     before, after = result.summary["stages"]
     assert after["mean_degC"] == pytest.approx(before["mean_degC"], abs=0.3)  # the wall gives a little
-    assert result.curves["heat_removed [J]"][-1] == pytest.approx(np.interp(100, result.curves["time [s]"], result.curves["heat_removed [J]"]), rel=1e-9)
+    assert result.curves["heat_removed [J]"][-1] == pytest.approx(
+        np.interp(100, result.curves["time [s]"], result.curves["heat_removed [J]"]), rel=1e-9
+    )
     assert after["slowest_degC"] - after["mean_degC"] < 0.3 * (before["slowest_degC"] - before["mean_degC"])
 
 
@@ -162,7 +164,10 @@ def test_a_piece_may_start_part_frozen() -> None:
     slush = run(small("piece.start_temperature=-1.5 degC")).summary
     liquid = run(small()).summary
     assert slush["aim"]["time_s"] < liquid["aim"]["time_s"]
-    assert run(small("piece.start_temperature=-1.5 degC", "stages.freeze.lasts=5 s")).curves["ice_mean [-]"][0] > 0.1
+    assert (
+        run(small("piece.start_temperature=-1.5 degC", "stages.freeze.lasts=5 s")).curves["ice_mean [-]"][0]
+        > 0.1
+    )
 
 
 def test_regions_may_start_at_their_own_temperature() -> None:

@@ -176,6 +176,9 @@ class Case:
         What was read, as the user named it.
     folder
         Where the files that the case names are looked for.
+    uncertainty
+        Key -> half-width of the interval that its value lies in 19 times out of 20 (a
+        `fem.case.shift.Spread`); None where the case does not say.
 
     """
 
@@ -192,6 +195,7 @@ class Case:
     text: str = field(repr=False)
     source: str
     folder: Path
+    uncertainty: dict[str, Any] | None = None
 
     @property
     def lasts(self) -> float:

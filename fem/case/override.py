@@ -15,7 +15,15 @@ from fem.case.locate import split
 from fem.errors import CaseError, Problem, unknown
 
 # Tables that a case may leave out, and that an override therefore may open.
-OPTIONAL = {("stepping",), ("watch",), ("watch", "points"), ("watch", "rays"), ("aim",), ("piece", "start")}
+OPTIONAL = {
+    ("stepping",),
+    ("watch",),
+    ("watch", "points"),
+    ("watch", "rays"),
+    ("aim",),
+    ("piece", "start"),
+    ("uncertainty",),
+}
 
 _PARTS = re.compile(r"""((?:[^="']|"(?:[^"\\]|\\.)*"|'[^']*')*)=(.*)""", re.DOTALL)
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 import tomllib
 from collections.abc import Iterator, Sequence
+from dataclasses import replace
 from pathlib import Path
 from typing import Any, TypeVar
 
@@ -12,6 +13,7 @@ from pydantic import BaseModel, ValidationError
 
 from fem.case.case import Aim, Case, Piece, Stage
 from fem.case.check import Parts, check
+from fem.case.uncertainty import read_uncertainty
 from fem.case.wording import KeyPath, Note, listed, notes, one_line, one_of, shown
 from fem.errors import CaseError, Problem, unknown
 from fem.heat.exchange import EXCHANGES
@@ -21,7 +23,7 @@ from fem.watch.schedule import Watch
 
 SCHEMA = 1
 REQUIRED = ("schema", "piece", "shape", "regions", "materials", "stages")
-SECTIONS = (*REQUIRED, "title", "watch", "aim", "stepping")
+SECTIONS = (*REQUIRED, "title", "watch", "aim", "stepping", "uncertainty")
 
 Model = TypeVar("Model", bound=BaseModel)
 
@@ -90,7 +92,7 @@ def loads(text: str, source: str = "<text>", folder: Path = Path(), overrides: S
         raise CaseError(source, _placed(found, tree, written, overrides))
     assert parts.piece is not None
     assert parts.shape is not None
-    return Case(
+    case = Case(
         schema=SCHEMA,
         title=title,
         piece=parts.piece,
@@ -105,6 +107,11 @@ def loads(text: str, source: str = "<text>", folder: Path = Path(), overrides: S
         source=source,
         folder=folder,
     )
+    if "uncertainty" in tree:
+        case = replace(case, uncertainty=read_uncertainty(case, tree["uncertainty"], found))
+        if found:
+            raise CaseError(source, _placed(found, tree, written, overrides))
+    return case
 
 
 def _parse(text: str, source: str) -> dict[str, Any]:

@@ -42,6 +42,18 @@ Every table and every key. This page is made from the program's own models:
 
 """
 
+_UNCERTAIN = """
+
+```toml
+[uncertainty]
+"stages.freeze.surfaces.outside.h"  = "30 %"     # a share of the value
+"shape.thickness"                   = "0.5 mm"   # or an amount in its unit
+"materials.mix.conductivity_factor" = "10 %"
+"piece.start_temperature"           = "2 K"
+```
+
+"""
+
 _EDITOR = """\
 ## In an editor
 
@@ -69,6 +81,7 @@ def reference() -> str:
     parts += _one("[watch]", "Watch", tables)
     parts += _one("[aim]", "Aim", tables)
     parts += _one("[stepping]", "Stepping", tables)
+    parts += ["## `[uncertainty]`\n\n", drawn["properties"]["uncertainty"]["description"], _UNCERTAIN]
     return "".join([*parts, _EDITOR])
 
 

@@ -77,6 +77,13 @@ def schema() -> dict[str, Any]:
         "watch": {"$ref": _place(Watch)},
         "aim": {"$ref": _place(Aim)},
         "stepping": {"$ref": _place(Stepping)},
+        "uncertainty": {
+            "type": "object",
+            "additionalProperties": {"type": "string"},
+            "description": "Half-width of the interval that a key's value lies in 19 times out of 20, by its "
+            "dotted key in quotes: a share of the value or an amount in its unit. Left out, what the trade "
+            "knows of h, coolant, thickness, conductivity and freezing point is used.",
+        },
     }
     # What a text is read into has a definition too, which no key refers to.
     used = re.findall(r"#/\$defs/(\w+)", json.dumps([properties, definitions]))

@@ -21,6 +21,7 @@ NO_FILM = 1e7
 # Rods this many times as long as thick freeze from the side as if they had no ends.
 LONG = 3.0
 
+
 class NoMethod(ValueError):
     """Says why no hand method applies to a case."""
 
@@ -116,19 +117,22 @@ def cooling_of(plan: Plan) -> Cooling:
     """
     if not plan.cooling:
         raise NoMethod("no hand method knows thawing")
-    found = [(stage, [_mean(e, stage.lasts) for e in _active(stage).values()]) for stage in plan.case.stages]
-    known = [(stage, [one for one in means if one is not None]) for stage, means in found if None not in means]
-    able = [(stage, means) for stage, means in known if means and max(m[1] for m in means) < plan.start_temperature]
+    able = []
+    for stage in plan.case.stages:
+        means = [_mean(exchange, stage.lasts) for exchange in _active(stage).values()]
+        known = [one for one in means if one is not None]
+        if known and len(known) == len(means) and max(m[1] for m in known) < plan.start_temperature:
+            able.append((stage, known))
     if not able:
         raise NoMethod("no stage cools the piece through a known coolant")
     end = plan.case.aim.reach if plan.case.aim is not None else plan.start_temperature
-    cold = [(stage, means) for stage, means in able if max(m[1] for m in means) < end] or able
-    stage, means = max(cold, key=lambda one: one[0].lasts)
-    h, coolant, _ = means[0]
-    if any(abs(m[0] / h - 1.0) > 0.01 or abs(m[1] - coolant) > 0.1 for m in means):
+    cold = [one for one in able if max(m[1] for m in one[1]) < end] or able
+    stage, sides = max(cold, key=lambda one: one[0].lasts)
+    h, coolant, _ = sides[0]
+    if any(abs(side[0] / h - 1.0) > 0.01 or abs(side[1] - coolant) > 0.1 for side in sides):
         raise NoMethod("the surfaces of the piece meet different conditions")
     remarks = [f"of stage {stage.name} alone"] if len(plan.case.stages) > 1 else []
-    remarks += list(dict.fromkeys(text for one in means for text in one[2]))
+    remarks += list(dict.fromkeys(text for side in sides for text in side[2]))
     surfaces = tuple(_active(stage))
     return Cooling(stage.name, surfaces, h, coolant, _walls(plan, surfaces, coolant), tuple(remarks))
 
@@ -217,6 +221,14 @@ def _box(across: float | None, along: float | None) -> Simple:
 
 
 def product_of(plan: Plan) -> Material:
+    """Return the one material that freezes.
+
+    Raises
+    ------
+    NoMethod
+        Where there are several, or none.
+
+    """
     materials = {id(m): m for r, m in plan.body.materials.items() if r in plan.body.domain.product}
     if len(materials) != 1:
         raise NoMethod("no hand method knows a product of several materials")
@@ -227,12 +239,17 @@ def product_of(plan: Plan) -> Material:
 
 
 def end_of(plan: Plan) -> float:
-    """Return the temperature that the core has to reach [degC]."""
+    """Return the temperature that the core has to reach [degC].
+
+    Raises
+    ------
+    NoMethod
+        Where the case does not say.
+
+    """
     if plan.case.aim is not None:
         return plan.case.aim.reach
     ends = [stage.until.temperature for stage in plan.case.stages if stage.until is not None]
     if not ends:
         raise NoMethod("the case has no aim: give one in [aim]")
     return ends[-1]
-
-

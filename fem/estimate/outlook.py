@@ -6,7 +6,16 @@ from typing import Any
 
 from fem.case.case import Case
 from fem.estimate.by_hand import estimates
-from fem.estimate.conditions import NO_FILM, Cooling, NoMethod, cooling_of, depth, frozen_conductivity, product_of
+from fem.estimate.by_poisson import poisson
+from fem.estimate.conditions import (
+    NO_FILM,
+    Cooling,
+    NoMethod,
+    cooling_of,
+    depth,
+    frozen_conductivity,
+    product_of,
+)
 from fem.plan import Plan
 
 FILM = "coolant film"
@@ -26,7 +35,7 @@ def outlook(case: Case) -> dict[str, Any]:
     ``title``; ``mass_kg`` and ``volume_m3`` of each region of the whole piece; ``biot`` (None where
     it has none), ``resistances_m2K_per_W`` from the core outwards and ``depth_m`` of the core;
     ``mesh`` (``nodes``, ``cells``, ``quality``, ``cell_m`` of each region); ``effort`` (``nodes``
-    and roughly the ``seconds`` of a run); ``estimates`` by hand; ``cautions``.
+    and roughly the ``seconds`` of a run); ``estimates`` by hand and by a Poisson solve; ``cautions``.
 
     Raises
     ------
@@ -50,7 +59,7 @@ def outlook(case: Case) -> dict[str, Any]:
             "cell_m": {region: domain.size(region) for region in domain.regions},
         },
         "effort": {"nodes": body.size, "seconds": seconds(plan)},
-        "estimates": estimates(plan),
+        "estimates": [*estimates(plan), poisson(plan)],
     }
     return {**said, "cautions": [*plan.cautions(), *_cautions(said, domain.product)]}
 
@@ -75,44 +84,6 @@ def seconds(plan: Plan) -> float:
     return 0.5 + FACTORISATIONS * stages * SLOWER[plan.case.stepping.accuracy] * each
 
 
-def sentence(said: dict[str, Any]) -> str:
-    """Return what an outlook comes to, in one sentence.
-
-    Parameters
-    ----------
-    said
-        From `outlook`.
-
-    """
-    from fem.result.answer import duration
-
-    found = {e["method"]: e for e in said["estimates"] if e["time_s"] is not None}
-    parts = []
-    for method, word in (("Pham", "about"), ("Plank", "at least")):
-        if method in found:
-            # Plank's formula is a bound wherever it is used; its range is where it is more than that.
-            outside = "" if method == "Plank" or found[method]["in_range"] else ", outside its range"
-            parts.append(f"{word} {duration(found[method]['time_s'])} ({method}{outside})")
-    if parts:
-        text = "By hand " + ", ".join(parts)
-        within = said["aim"]["within_s"] if said["aim"] else None
-        text += f", of {duration(within)} given" if within else ""
-    else:
-        text = f"By hand nothing can be said: {said['estimates'][0]['remarks'][0]}"
-    met = said["resistances_m2K_per_W"]
-    if not met:
-        return f"{text}."
-    most = max(met, key=lambda name: met[name])
-    share = 100.0 * met[most] / sum(met.values())
-    return f"{text}; the {most} is the largest resistance ({share:.0f} %): {_knob(most)}."
-
-
-def _knob(name: str) -> str:
-    if name == FILM:
-        return "agitation, or faster air, is the knob"
-    return "a thinner piece is the knob" if name == "product" else "a thinner or better conducting one is the knob"
-
-
 def _resistances(plan: Plan) -> dict[str, Any]:
     try:
         cooling = cooling_of(plan)
@@ -129,7 +100,8 @@ def _cautions(said: dict[str, Any], product: tuple[str, ...]) -> list[str]:
     """Return what is odd about the mesh."""
     found = []
     if said["mesh"]["quality"] < FLATTEST:
-        found.append(f"the worst cell of the mesh is nearly flat (quality {said['mesh']['quality']:.2g}, best 1)")
+        quality = f"quality {said['mesh']['quality']:.2g}, best 1"
+        found.append(f"the worst cell of the mesh is nearly flat ({quality}): mesh it again")
     if said["depth_m"] is not None:
         cell = max(said["mesh"]["cell_m"][region] for region in product)
         across = said["depth_m"] / cell

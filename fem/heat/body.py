@@ -4,51 +4,18 @@ from __future__ import annotations
 
 import copy
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 import numpy as np
 import scipy.sparse as sp
 from scipy.spatial import cKDTree
 
-from fem.curve import Array, Curve, State
+from fem.curve import Array, State
 from fem.heat import forms
 from fem.heat.linear import Factor, Pattern, factor_for
+from fem.heat.part import Part, place
 from fem.material import Material
 from fem.mesh.domain import Domain
-
-
-@dataclass(frozen=True, eq=False)
-class Part:
-    """All cells of one material.
-
-    Parameters
-    ----------
-    material
-        Its curve is the only one these cells know, also where they touch another part.
-    nodes
-        Nodes that hold some of it, shape (n,).
-    volume
-        Volume of it that each of those nodes stands for [m3], shape (n,).
-    stiffness
-        Conductance between nodes for unit conductivity along the common pattern [m].
-    hosted
-        Nodes whose enthalpy is this material's own.
-    guest
-        Nodes that hold some of it, but whose enthalpy is another's; the temperature is shared.
-
-    """
-
-    material: Material
-    nodes: np.ndarray
-    volume: Array
-    stiffness: sp.csr_matrix
-    hosted: np.ndarray
-    guest: np.ndarray
-
-    @property
-    def curve(self) -> Curve:
-        """The enthalpy, temperature and conductivity of the material."""
-        return self.material.curve
 
 
 class Body:
@@ -95,6 +62,7 @@ class Body:
     def _parts(self, entries: dict) -> list[Part]:
         """Group regions by material; materials that freeze host the nodes they touch."""
         unique = list({id(m): m for m in self.materials.values()}.values())
+        only = any(m.freezes for m in unique)
         parts = []
         taken = np.zeros(self.size, dtype=bool)
         for material in sorted(unique, key=lambda m: not m.freezes):
@@ -102,17 +70,40 @@ class Body:
             volume = sum((self.volumes[region] for region in regions), np.zeros(self.size))
             data = sum((self.pattern.gather(*entries[r]) for r in regions), np.zeros(len(self.pattern.rows)))
             nodes = np.flatnonzero(volume > 0)
-            hosted = nodes[~taken[nodes]]
-            guest = nodes[taken[nodes]]
+            shared = taken[nodes]
             taken[nodes] = True
-            parts.append(Part(material, nodes, volume[nodes], self.pattern.matrix(data), hosted, guest))
+            held = np.zeros(self.size, dtype=bool)
+            held[nodes] = True
+            filled = np.flatnonzero(held[self.pattern.rows] & held[self.pattern.columns])
+            rows, columns = (
+                np.searchsorted(nodes, x[filled]) for x in (self.pattern.rows, self.pattern.columns)
+            )
+            parts.append(
+                Part(
+                    material=material,
+                    nodes=place(nodes),
+                    volume=volume[nodes],
+                    stiffness=sp.csr_matrix((data[filled], (rows, columns)), shape=(len(nodes), len(nodes))),
+                    entries=place(filled),
+                    data=data[filled],
+                    rows=rows,
+                    columns=columns,
+                    hosted=place(nodes[~shared]),
+                    hosted_at=place(np.flatnonzero(~shared)),
+                    guest=place(nodes[shared]),
+                    guest_at=place(np.flatnonzero(shared)),
+                    guests=int(shared.sum()),
+                    leads=not shared.any() and material.freezes == only,
+                )
+            )
         return parts
 
     def _nearest_product(self) -> np.ndarray:
         """For each node, the one whose conductivity scales its unknown (see `HeatProblem`)."""
         leader = np.arange(self.size)
-        frozen = [part.hosted for part in self.parts if part.material.freezes]
-        others = [part.hosted for part in self.parts if not part.material.freezes]
+        every = np.arange(self.size)
+        frozen = [every[part.hosted] for part in self.parts if part.material.freezes]
+        others = [every[part.hosted] for part in self.parts if not part.material.freezes]
         if frozen and others:
             product, rest = np.concatenate(frozen), np.concatenate(others)
             _, near = cKDTree(self.domain.points[:, product].T).query(self.domain.points[:, rest].T)
@@ -146,11 +137,14 @@ class Body:
 
     def enthalpy_at(self, T: Array, nodes: np.ndarray) -> Array:
         """Return the host's enthalpy [J/m3] of some nodes at temperatures [degC]."""
-        out = np.empty(len(nodes))
+        out = np.empty(self.size)
+        out[nodes] = T
         for part in self.parts:
-            here = np.isin(nodes, part.hosted)
-            out[here] = part.curve.enthalpy(T[here])
-        return out
+            mine = np.zeros(self.size, dtype=bool)
+            mine[part.hosted] = True
+            mine &= np.isin(np.arange(self.size), nodes)
+            out[mine] = part.curve.enthalpy(out[mine])
+        return out[nodes]
 
     def stored(self, u: Array, state: State) -> tuple[Array, Array]:
         """Return the heat each node holds [J] and its derivative to the node's temperature [J/K]."""
@@ -159,13 +153,8 @@ class Body:
             return volume * u, volume * state.capacity
         held, slope = np.zeros(self.size), np.zeros(self.size)
         for part in self.parts:
-            H, c = u[part.nodes], state.capacity[part.nodes]
-            if len(part.guest):
-                at = np.searchsorted(part.nodes, part.guest)
-                T = state.temperature[part.guest]
-                H[at], c[at] = part.curve.enthalpy(T), part.curve.capacity(T)
-            held[part.nodes] += part.volume * H
-            slope[part.nodes] += part.volume * c
+            held[part.nodes] += part.volume * part.enthalpy(u, state.temperature)
+            slope[part.nodes] += part.volume * part.capacity(state)
         return held, slope
 
     def conduction(self, state: State) -> Array:
@@ -178,24 +167,14 @@ class Body:
             return np.asarray(-(self.parts[0].stiffness @ state.kirchhoff))
         flow = np.zeros(self.size)
         for part in self.parts:
-            theta = np.zeros(self.size)
-            theta[part.hosted] = state.kirchhoff[part.hosted]
-            if len(part.guest):
-                theta[part.guest] = part.curve.kirchhoff(state.temperature[part.guest])
-            flow -= part.stiffness @ theta
+            flow[part.nodes] -= part.stiffness @ part.kirchhoff(state)
         return flow
 
     def conduction_change(self, state: State, dT: Array) -> Array:
         """Return the change of `conduction` [W] for changes of temperature [K], shape (n, m)."""
-        if self.single:
-            return np.asarray(-(self.parts[0].stiffness @ (state.conductivity[:, None] * dT)))
         flow = np.zeros_like(dT)
         for part in self.parts:
-            k = np.zeros(self.size)
-            k[part.hosted] = state.conductivity[part.hosted]
-            if len(part.guest):
-                k[part.guest] = part.curve.conductivity(state.temperature[part.guest])
-            flow -= part.stiffness @ (k[:, None] * dT)
+            flow[part.nodes] -= part.stiffness @ (part.conductivity(state)[:, None] * dT[part.nodes])
         return flow
 
     def scale(self, state: State) -> Array:
@@ -209,15 +188,14 @@ class Body:
         symmetric, and takes as few iterations as the unsymmetric exact one.
         """
         if self.single:
-            return self.parts[0].stiffness.data
+            return self.parts[0].data
         data = np.zeros(len(self.pattern.rows))
         for part in self.parts:
-            k = np.zeros(self.size)
-            k[part.hosted] = state.conductivity[part.hosted]
-            if len(part.guest):
-                k[part.guest] = part.curve.conductivity(state.temperature[part.guest])
-            root = np.sqrt(k / scale)
-            data += part.stiffness.data * root[self.pattern.rows] * root[self.pattern.columns]
+            if part.leads:
+                data[part.entries] += part.data
+            else:
+                root = np.sqrt(part.conductivity(state) / scale[part.nodes])
+                data[part.entries] += part.data * root[part.rows] * root[part.columns]
         return data
 
     def heat(self, u: Array) -> dict[str, float]:
@@ -226,10 +204,7 @@ class Body:
         out = {}
         for region, material in self.materials.items():
             part = next(p for p in self.parts if p.material is material)
-            H = np.zeros(self.size)
-            H[part.hosted] = u[part.hosted]
-            H[part.guest] = part.curve.enthalpy(T[part.guest])
-            out[region] = float(self.volumes[region] @ H)
+            out[region] = float(self.volumes[region][part.nodes] @ part.enthalpy(u, T))
         return out
 
     def masses(self) -> dict[str, float]:

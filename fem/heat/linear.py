@@ -17,10 +17,18 @@ from scipy.sparse.csgraph import breadth_first_order, reverse_cuthill_mckee
 
 from fem.mesh.domain import Array
 
-# Banded work grows with the square of the bandwidth: past this the sparse factor is cheaper.
-WIDEST_BAND = 160
-# Past this many unknowns a hierarchy and its iterations are cheaper than either factor.
-MOST_FOR_FACTORS = 40_000
+# Times of one factorisation and solution in ms, bars with a wall and rods, one thread:
+#
+#   nodes      2.8k   10k   13k   26k   51k (rod)   65k   200k (rod)   256k
+#   bandwidth    41    40    87   121          86   191          170    379
+#   banded     0.78   3.3   7.2    21          38   112
+#   LDL'       1.24   4.4    10    40          54   177          356   1527
+#   multigrid   6.4   6.3    14    29          31    84          138    520
+#
+# The work of a band grows with its square; past this width LDL' is level with it.
+WIDEST_BAND = 200
+# Multigrid is level with the band here; a factor serves several right-hand sides at little cost.
+MOST_FOR_FACTORS = 50_000
 # A residual of 1e-8 of the right-hand side; looser ones show in the enthalpies.
 RESIDUAL, MOST_ITERATIONS = 1e-8, 100
 # A new hierarchy costs about as much as this many iterations.
@@ -40,23 +48,34 @@ class Pattern:
     """
 
     def __init__(self, rows: np.ndarray, columns: np.ndarray, size: int):
-        diagonal = np.arange(size)
-        key = np.unique(np.concatenate([rows.astype(np.int64) * size + columns, diagonal * (size + 1)]))
+        diagonal = np.arange(size, dtype=np.int32)
+        rows, columns = np.concatenate([rows, diagonal]), np.concatenate([columns, diagonal])
+        # Bytes that only say that there is an entry: their sum is never looked at.
+        places = sp.csr_matrix((np.ones(len(rows), dtype=np.int8), (rows, columns)), shape=(size, size))
         self.size = size
-        self.rows = (key // size).astype(np.int32)
-        self.columns = (key % size).astype(np.int32)
-        self.indptr = np.searchsorted(self.rows, np.arange(size + 1)).astype(np.int32)
-        self.diagonal = np.searchsorted(key, diagonal * (size + 1))
-        self._key = key
+        self.indptr, self.columns = places.indptr, places.indices
+        self.rows = _rows(places)
+        self.diagonal = np.flatnonzero(self.rows == self.columns)
 
     def gather(self, rows: np.ndarray, columns: np.ndarray, values: Array) -> Array:
         """Return the values of coordinate entries laid out along the pattern, shape (nnz,)."""
-        place = np.searchsorted(self._key, rows.astype(np.int64) * self.size + columns)
-        return np.asarray(np.bincount(place, weights=values, minlength=len(self._key)), dtype=float)
+        summed = sp.csr_matrix((values, (rows, columns)), shape=(self.size, self.size))
+        if summed.nnz == len(self.rows):
+            return np.asarray(summed.data)
+        size = np.int64(self.size)
+        place = np.searchsorted(self.rows * size + self.columns, _rows(summed) * size + summed.indices)
+        data = np.zeros(len(self.rows))
+        data[place] = summed.data
+        return data
 
     def matrix(self, data: Array) -> sp.csr_matrix:
         """Return a CSR matrix that shares `data`, exact zeros and all."""
         return sp.csr_matrix((data, self.columns, self.indptr), shape=(self.size, self.size))
+
+
+def _rows(matrix: sp.csr_matrix) -> np.ndarray:
+    """Row of each entry, shape (nnz,)."""
+    return np.repeat(np.arange(matrix.shape[0], dtype=np.int32), np.diff(matrix.indptr))
 
 
 class Factor(Protocol):
@@ -148,7 +167,7 @@ class SparseLDL:
         x = np.asarray(self._solver.solve(np.ascontiguousarray(rhs)))
         # LDL' carries on past a negative pivot, and copying the pivots out costs a tenth of the
         # factorisation; the energy of the solution tells as much of what the right-hand side sees.
-        _refuse_unless(bool(np.all(np.isfinite(x))) and (x @ rhs > 0.0 or not rhs.any()))
+        _refuse_unless(bool(np.all(np.isfinite(x))) and bool(x @ rhs > 0.0 or not rhs.any()))
         return x
 
 

@@ -163,6 +163,15 @@ class HeatProblem:
             out[nodes] += area * self.exchanges[name].flux(T[nodes], time - self.began)[0]
         return out
 
+    def balance(self, time: float, u: Array, state: State | None = None) -> tuple[Array, Array]:
+        """Return what each node holds [J] and what reaches it [W], and nothing else of a `look`.
+
+        `state` may be handed in where it is known already.
+        """
+        state = self.body.state(u) if state is None else state
+        held = self.body.stored(u, state)[0]
+        return held, self.body.conduction(state) - self.leaving(time, state.temperature)
+
     def jacobian(self, look: Look, g: float, du: Array) -> Array:
         """Return the exact change of ``stored - g rate`` [J] for changes of `u`, shape (n, m)."""
         dT = du / look.state.capacity[:, None]
@@ -186,7 +195,7 @@ class HeatProblem:
         if self.body.single:
             return u
         for part in self.body.parts:
-            if not len(part.guest):
+            if not part.guests:
                 continue
             for _ in range(20):
                 state = self.body.state(u)

@@ -18,7 +18,6 @@ from fem.march.newton import Effort, solve
 from fem.march.problem import Problem
 from fem.march.step import Moment, Step, begin, recurrence
 
-
 SMALLEST = 1e-9
 """No step is shorter than this share of the time that has passed, or of a second."""
 

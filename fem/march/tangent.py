@@ -21,7 +21,7 @@ class Varied(Protocol):
     def free(self) -> np.ndarray:
         """Unknowns that follow the equation; the others are imposed."""
 
-    def varied_start(self, moment: Moment) -> Array:
+    def imposed(self, time: float, u: Array) -> Array:
         """Return the derivative of imposed unknowns, 0 for free ones, shape (n, m)."""
 
     def varied(self, time: float, look: Any) -> tuple[Array, Array]:
@@ -50,7 +50,7 @@ class Tangents:
 
     def __init__(self, problem: Varied, start: Moment, du: Array):
         self._problem = problem
-        self.du = np.where(problem.free[:, None], du, problem.varied_start(start))
+        self.du = np.where(problem.free[:, None], du, problem.imposed(start.time, start.u))
         self.before = self.du
         explicit, _ = problem.varied(start.time, start.look)
         self._stored = problem.stored_change(start.look, self.du) + explicit
@@ -62,7 +62,7 @@ class Tangents:
         new, old, g = recurrence(step.size, step.earlier)
         explicit, rates = problem.varied(after.time, after.look)
         known = new * self._stored - old * self._stored_before + g * rates - explicit
-        imposed = problem.varied_start(after)
+        imposed = problem.imposed(after.time, after.u)
         free = problem.free[:, None]
         du = problem.tangent(after.look, g, np.where(free, known, imposed))
         self.before, self.du = self.du, du

@@ -11,6 +11,7 @@ import skfem
 
 from fem.mesh.domain import Array, Domain
 from fem.mesh.shape import Bar, MeshShape, Ring, Rod, Shape, Slab
+from fem.mesh.split import split
 
 # Every mapping is exact in area; beyond rounding it is a mistake of the mapping.
 AREA_TOLERANCE = 1e-9
@@ -32,7 +33,10 @@ def build(shape: Shape, length: float | None) -> Domain:
 
     """
     if isinstance(shape, MeshShape):
-        return shape.file.domain(shape.length_unit, length)
+        grid = shape.file
+        for _ in range(shape.split):
+            grid = split(grid)
+        return grid.domain(shape.length_unit, length)
     if isinstance(shape, Bar):
         domain = _bar(shape, length or 1.0)
     elif isinstance(shape, Slab):

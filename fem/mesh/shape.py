@@ -27,6 +27,9 @@ CELLS_ACROSS = 44
 MOST_CELLS = 2_000_000
 """A finer mesh than this is taken for a slip in the unit of the cell."""
 
+MOST_SPLITS = 4
+"""Each split makes four cells of one."""
+
 CELL = Kind("length", "m", "0.5 mm", above=0.0, most=100.0)
 CORNER = Kind("length", "m", "6 mm", least=0.0, most=100.0)
 Section = Literal["plane", "axisymmetric"]
@@ -349,6 +352,8 @@ class MeshShape(BaseModel):
         Path, relative to the case file; read at once, so that a mistake in it is one of the case.
     length_unit
         What the file's coordinates are in: "mm", or a length that stands for it, "1 mm" [m].
+    split
+        How many times each cell of the file is cut in four, such as 1; the outline stays as drawn.
 
     """
 
@@ -358,6 +363,7 @@ class MeshShape(BaseModel):
     form: Literal["mesh"] = "mesh"
     file: Annotated[Grid, PlainValidator(_read_mesh, json_schema_input_type=str), Field(examples=["bar.msh"])]
     length_unit: LengthUnit
+    split: Annotated[int, Field(ge=0, le=MOST_SPLITS, strict=True, examples=[1])] = 0
 
     @model_validator(mode="after")
     def _size_is_likely(self) -> Self:

@@ -37,7 +37,33 @@ def sentence(summary: dict[str, Any], *, with_place: bool = False) -> str:
         if aim["at"] == "slowest":
             text += f": it ends at {last:.1f} degC"
         return text + (f"; no, {duration(aim['within_s'])} is not enough." if aim["within_s"] else ".")
-    return f"{who} reaches {reach} after {duration(aim['time_s'])}{_verdict(aim)}."
+    return f"{who} reaches {reach} after {duration(aim['time_s'])}{_likely(summary)}{_verdict(aim)}{_knob(summary)}."
+
+
+def _likely(summary: dict[str, Any]) -> str:
+    """Say the interval that the time lies in 19 times out of 20."""
+    spread = (summary.get("uncertainty") or {}).get("time_s")
+    return f" (likely {span(spread['low'], spread['high'])})" if spread else ""
+
+
+def _knob(summary: dict[str, Any]) -> str:
+    """Say what the time hangs on first."""
+    inputs = (summary.get("uncertainty") or {}).get("inputs")
+    return f"; it hangs on {inputs[0]['name']} first" if inputs else ""
+
+
+def span(low: float, high: float) -> str:
+    """Return an interval of times in one unit, to two figures: no range is known better.
+
+    >>> span(958.0, 1420.0), span(61.0, 88.0), span(17100.0, 25000.0)
+    ('16-24 min', '61-88 s', '4.8-6.9 h')
+    """
+    unit, size = ("s", 1.0) if high < 120.0 else ("min", 60.0) if high < 7200.0 else ("h", 3600.0)
+    return "-".join(_two_figures(x / size) for x in (low, high)) + f" {unit}"
+
+
+def _two_figures(value: float) -> str:
+    return f"{value:.0f}" if value >= 10.0 else f"{value:.1f}"
 
 
 def _place(summary: dict[str, Any]) -> str:
@@ -84,6 +110,20 @@ def details(summary: dict[str, Any]) -> list[tuple[str, str]]:
         lines.append(("effort", f"{text}, {effort['elapsed_s']:.1f} s"))
     lines += [("caution", caution) for caution in summary.get("cautions", [])]
     return lines
+
+
+def ranking(summary: dict[str, Any], width: int = 12) -> list[tuple[str, str, str, str]]:
+    """Return a row for each uncertain input, the most important first.
+
+    Name, half-width, a bar of its effect and plain words.
+    """
+    inputs = (summary.get("uncertainty") or {}).get("inputs") or []
+    sizes = [max(abs(entry["effect_of_less_s"]), abs(entry["effect_of_more_s"])) for entry in inputs]
+    most = max(sizes, default=0.0) or 1.0
+    return [
+        (entry["name"], f"+-{entry['half_width']}", "#" * max(1, round(width * size / most)), entry["words"])
+        for entry, size in zip(inputs, sizes, strict=True)
+    ]
 
 
 def duration(seconds: float) -> str:

@@ -156,7 +156,6 @@ class VtuFrames:
         for name, values in points.items():
             self._grid.point_data[name] = values
         self._grid.field_data["TimeValue"] = np.array([time])
-        self._writer.Modified()
         self._writer.Write()
         replace(self._folder / _name(number), self._writer.GetOutputString())
         self._times[number:] = [time]

@@ -15,7 +15,7 @@ from fem.errors import CaseError
 from fem.result.frames import FieldSeries, check_array, names, open_fields
 from fem.result.view import DRAWING, REFUSED
 
-LONG_SIDE, LEAST, BESIDE, ABOVE, BELOW = 1000, 420, 40, 70, 170
+LONG_SIDE, LEAST, BESIDE, ABOVE, BELOW, SLIDER = 800, 420, 40, 60, 150, 50
 """Pixels of a picture: the section's longer side, its least room, and what stands around it."""
 
 LABELS = {
@@ -57,7 +57,7 @@ def main(asked: str) -> int:
 def _picture(series: FieldSeries, number: int, array: str, out: Path) -> None:
     from PIL import Image
 
-    plotter, _ = _scene(series, number, array, off_screen=True)
+    plotter, _ = _scene(series, number, array, ABOVE, off_screen=True)
     image = plotter.screenshot(return_img=True)
     plotter.close()
     Image.fromarray(np.asarray(image)).save(out, format="PNG")
@@ -65,7 +65,7 @@ def _picture(series: FieldSeries, number: int, array: str, out: Path) -> None:
 
 def _window(series: FieldSeries, number: int, array: str) -> None:
     """Show a frame and a slider that goes to the others."""
-    plotter, grid = _scene(series, number, array, off_screen=False)
+    plotter, grid = _scene(series, number, array, ABOVE + SLIDER, off_screen=False)
     holding = [i for i in range(len(series.times)) if array in names(series.read(i))]
 
     def move(time: float) -> None:
@@ -75,17 +75,28 @@ def _window(series: FieldSeries, number: int, array: str) -> None:
 
     if len(holding) > 1:
         bounds = [series.times[holding[0]], series.times[holding[-1]]]
-        plotter.add_slider_widget(move, bounds, value=series.times[number], title="time [s]", color="black")
+        height = 1.0 - 85.0 / plotter.window_size[1]
+        plotter.add_slider_widget(
+            move,
+            bounds,
+            value=series.times[number],
+            pointa=(0.1, height),
+            pointb=(0.9, height),
+            fmt="%.0f",
+            color="black",
+            tube_width=0.003,
+            slider_width=0.015,
+        )
     plotter.show()
 
 
-def _scene(series: FieldSeries, number: int, array: str, off_screen: bool) -> tuple[Any, Any]:
+def _scene(series: FieldSeries, number: int, array: str, above: int, off_screen: bool) -> tuple[Any, Any]:
     """Put a frame on a stage, seen from in front; return the plotter and the grid it shows."""
     grid = series.read(number)
     low, high = grid.points.min(axis=0)[:2], grid.points.max(axis=0)[:2]
     scale = LONG_SIDE / float(np.max(high - low))
     room = np.maximum(scale * (high - low), LEAST)
-    size = [int(room[0]) + 2 * BESIDE, int(room[1]) + ABOVE + BELOW]
+    size = [int(room[0]) + 2 * BESIDE, int(room[1]) + above + BELOW]
     # Typed loosely: what decorates pyvista's methods hides their arguments from the checker.
     plotter: Any = pv.Plotter(off_screen=off_screen, window_size=size)
     plotter.set_background("white")
@@ -120,7 +131,7 @@ def _scene(series: FieldSeries, number: int, array: str, off_screen: bool) -> tu
     plotter.view_xy()
     plotter.enable_parallel_projection()
     x, y = (low + high) / 2.0
-    y -= 0.5 * (BELOW - ABOVE) / scale
+    y -= 0.5 * (BELOW - above) / scale
     plotter.camera.focal_point, plotter.camera.position = (x, y, 0.0), (x, y, 1.0)
     plotter.camera.parallel_scale = 0.5 * size[1] / scale
     return plotter, grid

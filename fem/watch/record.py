@@ -12,10 +12,9 @@ from fem.heat.body import Body
 from fem.heat.problem import HeatProblem, Look
 from fem.march.march import Step
 from fem.watch.fronts import Fronts
+from fem.watch.gauge import Gauge
 from fem.watch.ledger import Ledger
-from fem.watch.product import Product
-from fem.watch.sample import Outside, sampler
-from fem.watch.schedule import SLOWEST, Watch
+from fem.watch.schedule import Watch
 
 Row = dict[str, float | None]
 
@@ -52,25 +51,16 @@ class Record:
     def __init__(self, body: Body, watch: Watch, surfaces: tuple[str, ...], cooling: bool):
         self.body = body
         self.watch = watch
-        self.product = Product(body, cooling)
+        self.gauge = Gauge(body, watch.points, cooling)
+        self.product = self.gauge.product
         self.ledger = Ledger()
         self.surfaces = surfaces
         self.fronts = Fronts(self.product, watch.front, watch.rays)
-        self._points = tuple(watch.points)
-        try:
-            places = np.array(list(watch.points.values())).reshape(-1, 2).T
-            self._at_points, _ = sampler(body.domain, places)
-        except Outside as outside:
-            names = ", ".join(f'"{self._points[i]}"' for i in outside.which)
-            raise ValueError(f"watched point {names} lies outside the piece") from None
         self._next = 0
 
     def measure(self, u: Array, at: str) -> float:
         """Return the temperature at the slowest point or at a watched one [degC]."""
-        T = self.body.temperature(u)
-        if at == SLOWEST:
-            return self.product.slowest(T)[1]
-        return float((self._at_points[self._points.index(at)] @ T)[0])
+        return self.gauge.measure(u, at)
 
     def begin_stage(self, problem: HeatProblem, u: Array) -> Iterator[Rows]:
         """Open the accounts of a stage; yield the row of time 0 before anything is imposed."""
@@ -99,8 +89,8 @@ class Record:
     def _row(self, problem: HeatProblem, look: Look, time: float, carried: Array) -> Rows:
         u, T = look.u, look.state.temperature
         curves: Row = {"time [s]": time}
-        for name, value in zip(self._points, self._at_points @ T, strict=True):
-            curves[f"point.{name} [degC]"] = float(value)
+        for name, value in self.gauge.points(T).items():
+            curves[f"point.{name} [degC]"] = value
         curves["slowest [degC]"] = self.product.slowest(T)[1]
         curves["mean [degC]"] = self.product.mean(u)
         ice = self.product.mean_ice(self.product.ice(T))

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+import itertools
 
 import numpy as np
 import pytest
@@ -12,56 +12,12 @@ from fem.march.control import Control
 from fem.march.march import march
 from fem.march.newton import Effort
 from fem.march.step import Step, begin
+from tests.march.tanks import START, Decay, Look
 
 
-@dataclass
-class Look:
-    u: np.ndarray
-    stored: np.ndarray
-    stored_slope: np.ndarray
-    rate: np.ndarray
-    passed: np.ndarray
-
-
-class Decay:
-    """Two tanks that drain into one another and out: stored = u, exact by an eigenvalue each."""
-
-    rates = np.array([[-1.0, 0.5], [0.5, -1.0]])
-    free = np.array([True, True])
-
-    def impose(self, time: float, u: np.ndarray) -> np.ndarray:
-        return u
-
-    def look(self, time: float, u: np.ndarray) -> Look:
-        return Look(u, u, np.ones(2), self.rates @ u, np.array([0.5 * u.sum()]))
-
-    def correct(self, look: Look, g: float, residual: np.ndarray) -> np.ndarray:
-        return np.linalg.solve(np.eye(2) - g * self.rates, -residual)
-
-    def settle(self, stored: np.ndarray, look: Look) -> np.ndarray:
-        return stored
-
-    def mean_size(self, amount: np.ndarray) -> float:
-        return float(np.sqrt(np.mean(amount**2)))
-
-    def worst_size(self, amount: np.ndarray, look: Look) -> float:
-        return float(np.abs(amount).max())
-
-    def fastest(self, rate: np.ndarray) -> float:
-        return float(np.abs(rate).max())
-
-    def smooth_size(self, amount: np.ndarray, before: Look, after: Look) -> float:
-        return 0.0
-
-    @staticmethod
-    def exact(t: float) -> np.ndarray:
-        return np.array([1.5 * np.exp(-0.5 * t) + 0.5 * np.exp(-1.5 * t), 1.5 * np.exp(-0.5 * t) - 0.5 * np.exp(-1.5 * t)])
-
-
-START = np.array([2.0, 1.0])
-
-
-def steps(control: Control, landings=(), end: float = 2.0, stop=None, problem=None) -> tuple[list[Step], Effort]:
+def steps(
+    control: Control, landings=(), end: float = 2.0, stop=None, problem=None
+) -> tuple[list[Step], Effort]:
     problem, effort = problem or Decay(), Effort()
     start = begin(problem, 0.0, START, np.zeros(1))
     return list(march(problem, start, end, landings, control, effort, stop)), effort
@@ -78,7 +34,10 @@ def test_the_error_falls_with_the_square_of_a_fixed_step() -> None:
 
 
 def test_tighter_tolerances_give_smaller_errors() -> None:
-    errors = [np.abs(steps(Control(tolerance=t))[0][-1].after.u - Decay.exact(2.0)).max() for t in (1e-2, 1e-3, 1e-4)]
+    errors = [
+        np.abs(steps(Control(tolerance=t))[0][-1].after.u - Decay.exact(2.0)).max()
+        for t in (1e-2, 1e-3, 1e-4)
+    ]
     assert errors[0] > 3 * errors[1] > 9 * errors[2]
 
 
@@ -90,7 +49,7 @@ def test_every_landing_is_the_exact_end_of_a_step() -> None:
 
 def test_steps_join_without_a_gap() -> None:
     done, effort = steps(Control(tolerance=1e-3), [0.7])
-    assert all(a.after is b.before for a, b in zip(done, done[1:], strict=False))
+    assert all(a.after is b.before for a, b in itertools.pairwise(done))
     assert effort.steps == len(done)
 
 
@@ -130,8 +89,13 @@ def test_a_march_that_cannot_go_on_says_so_and_keeps_its_last_state() -> None:
 
     taken = []
     problem = Stuck()
-    with pytest.raises(RunFailure, match="did not converge") as failure:
-        for step in march(problem, begin(problem, 0.0, START, np.zeros(1)), 2.0, [], Control(1e-3), Effort()):
+    steps_taken = march(problem, begin(problem, 0.0, START, np.zeros(1)), 2.0, [], Control(1e-3), Effort())
+
+    def take_all() -> None:
+        for step in steps_taken:
             taken.append(step)
+
+    with pytest.raises(RunFailure, match="did not converge") as failure:
+        take_all()
     assert failure.value.time == taken[-1].after.time > 0.3
     assert failure.value.causes

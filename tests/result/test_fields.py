@@ -1,5 +1,6 @@
 from __future__ import annotations
 
+import errno
 import os
 import shutil
 import signal
@@ -17,7 +18,7 @@ import pyvista as pv
 
 from fem.errors import CaseError
 from fem.mesh.build import build
-from fem.result import fields
+from fem.result import disk, fields
 from fem.result.fields import VtuFrames
 from fem.result.folder import open_run
 from fem.result.frames import open_fields
@@ -329,6 +330,19 @@ def test_a_folder_that_goes_away_is_an_error_that_names_the_file(tmp_path: Path)
     (tmp_path / "fields").rmdir()
     with pytest.raises(OSError, match=r"0001\.vtu"):
         frames.write(1, 1.0, values)
+
+
+def test_what_cannot_be_replaced_stays_as_it_was(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    def full(*_: object) -> None:
+        raise OSError(errno.ENOSPC, os.strerror(errno.ENOSPC))
+
+    path = tmp_path / "fields.pvd"
+    disk.replace(path, "before")
+    monkeypatch.setattr(os, "replace", full)
+    with pytest.raises(OSError, match=r"No space left on device: .*fields\.pvd"):
+        disk.replace(path, "after")
+    assert path.read_text() == "before"
+    assert list(tmp_path.iterdir()) == [path]
 
 
 def test_a_frame_is_replaced_whole(tmp_path: Path) -> None:

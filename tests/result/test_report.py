@@ -2,10 +2,10 @@ from __future__ import annotations
 
 import json
 import re
+import resource
 import shutil
 import subprocess
 import sys
-import time
 from collections.abc import Callable
 from html.parser import HTMLParser
 from pathlib import Path
@@ -505,15 +505,16 @@ def test_signs_are_set_as_print_has_them() -> None:
 
 def test_the_workshop_bar_is_small_and_quick(cases: Path, tmp_path: Path) -> None:
     run(load(cases / "workshop_bar.toml"), tmp_path / "bar")
-    began = time.perf_counter()
+    # Time of the processor: what others do on the machine meanwhile is not the page's doing.
+    began = resource.getrusage(resource.RUSAGE_CHILDREN)
     command = [sys.executable, "-m", "fem.cli", "report", str(tmp_path / "bar")]
     done = subprocess.run(command, capture_output=True, text=True, timeout=60, check=True)
-    lasted = time.perf_counter() - began
+    ended = resource.getrusage(resource.RUSAGE_CHILDREN)
     page = tmp_path / "bar" / "report.html"
     assert done.stdout.strip() == str(page)
     assert done.stderr == ""
     assert page.stat().st_size < 3e6
-    assert lasted < 4.0
+    assert ended.ru_utime + ended.ru_stime - began.ru_utime - began.ru_stime < 4.0
 
 
 def test_the_command_says_what_is_wrong_without_a_traceback(folder: Path) -> None:

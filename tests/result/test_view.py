@@ -64,14 +64,14 @@ def test_a_picture_shows_the_section_or_a_sentence_says_what_is_missing(folder: 
     assert high > wide
     coloured = np.ptp(image, axis=2) > 20
     # The section is drawn in colours, symmetrical to a pixel or two of its outline, on white.
-    assert coloured[70:1070].mean() > 0.5
-    assert np.all(image[5:60, wide // 2 :] == 255)
-    rows = slice(100, 1040)
+    assert coloured[60:860].mean() > 0.5
+    assert np.all(image[5:50, wide // 2 :] == 255)
+    rows = slice(90, 830)
     gap = np.abs(image[rows] - image[rows, ::-1]).max(axis=2)
     assert np.mean(gap > 12) < 0.02
     # Cold at the rim, warm in the core: the palette rises from blue to yellow.
-    middle = image[570, wide // 2]
-    rim = image[570, 60]
+    middle = image[460, wide // 2]
+    rim = image[460, 48]
     assert middle[0] > rim[0] + 40
 
 
@@ -101,10 +101,16 @@ def test_a_folder_without_fields_is_refused(tmp_path: Path) -> None:
         picture(tmp_path / "nowhere", tmp_path / "map.png")
 
 
-def test_a_picture_that_cannot_be_written_is_an_error_with_its_name(folder: Path, tmp_path: Path) -> None:
+def test_a_picture_that_cannot_be_written_is_an_error_with_its_name(
+    folder: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
     with pytest.raises(FileNotFoundError) as failed:
         picture(folder, tmp_path / "nowhere" / "map.png")
     assert failed.value.filename == str(tmp_path / "nowhere" / "map.png")
+    # Of two things that are missing the folder is named first.
+    child_ends(monkeypatch, -11, "drawing\n")
+    with pytest.raises(FileNotFoundError):
+        picture(folder, tmp_path / "nowhere" / "map.png")
 
 
 def test_a_crash_of_the_child_says_which_library_to_install(

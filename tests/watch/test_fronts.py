@@ -14,7 +14,10 @@ ACROSS = Ray.model_validate({"from": ["0 mm", "2 mm"], "to": ["20 mm", "2 mm"]})
 BACK = Ray.model_validate({"from": ["20 mm", "2 mm"], "to": ["0 mm", "2 mm"]})
 
 
-def fronts(body, level: Level = Level("freezing point"), **rays: Ray) -> Fronts:
+FREEZING_POINT = Level("freezing point")
+
+
+def fronts(body, level: Level = FREEZING_POINT, **rays: Ray) -> Fronts:
     return Fronts(Product(body), level, rays or {"across": ACROSS})
 
 
@@ -67,7 +70,9 @@ def test_an_isotherm_is_found_between_nodes() -> None:
     x = body.domain.points[0]
     T = -10.0 + 700.0 * x
     u = body.materials["product"].curve.enthalpy(T)
-    assert fronts(body, Level("temperature", -3.0)).see(0.0, u, T)["across"][0] == pytest.approx(0.01, abs=2e-5)
+    assert fronts(body, Level("temperature", -3.0)).see(0.0, u, T)["across"][0] == pytest.approx(
+        0.01, abs=2e-5
+    )
 
 
 def test_a_share_of_ice_is_where_the_material_holds_it() -> None:

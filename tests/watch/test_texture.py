@@ -17,7 +17,7 @@ from fem.plan import Plan
 from fem.run import run
 from fem.watch.product import Product
 from fem.watch.texture import DEFAULT_REACH, FreezingTimes
-from tests.pieces import MIX, WATER, bar, bar_body, material, slab_body, small
+from tests.pieces import MIX, STEEL, WATER, bar, bar_body, material, slab_body, small
 
 COLD, WARM = -10.0, 5.0
 
@@ -84,8 +84,10 @@ def test_the_local_freezing_time_is_the_difference_of_two_crossings_of_the_curve
     assert last["local_freezing_time_s"][centre] == pytest.approx(fell[1] - fell[0], abs=0.21)
 
 
-@pytest.mark.parametrize("straight", [True, False])
-def test_a_crossing_is_found_along_the_cubic_of_a_step(straight: bool) -> None:
+@pytest.mark.parametrize("earlier", [None, 80.0])
+def test_a_crossing_is_found_along_the_cubic_of_a_step_and_a_first_step_is_straight(
+    earlier: float | None,
+) -> None:
     body = slab_body()
     curve = body.materials["product"].curve
     high, low = float(curve.enthalpy(WARM)), float(curve.enthalpy(COLD))
@@ -95,9 +97,9 @@ def test_a_crossing_is_found_along_the_cubic_of_a_step(straight: bool) -> None:
     rates = 0.0 * ones, 3.0 * (low - high) / 100.0 * ones
     seen = freezing(body)
     a, b = moment(50.0, high * ones, rates[0]), moment(150.0, low * ones, rates[1])
-    seen.see(Step(a, b, straight))
+    seen.see(Step(a, b, earlier))
     s = (high - middle) / (high - low)
-    exact = 50.0 + 100.0 * (s if straight else s ** (1 / 3))
+    exact = 50.0 + 100.0 * (s if earlier is None else s ** (1 / 3))
     np.testing.assert_allclose(seen.frozen_at, exact, atol=0.02)
 
 
@@ -148,6 +150,7 @@ def test_a_piece_frozen_from_the_start_never_froze() -> None:
     body = slab_body()
     seen = freezing(body, reach=-9.0)
     seen.see(step(body, 0.0, 10.0, -5.0, COLD))
+    seen.see(step(body, 10.0, 20.0, COLD, COLD))
     assert np.all(np.isnan(seen.frozen_at))
     assert np.all(np.isnan(seen.local))
 
@@ -199,8 +202,9 @@ def test_a_table_without_a_freezing_point_freezes_nowhere() -> None:
     assert np.all(np.isnan(seen.frozen_at))
 
 
-def test_the_mould_does_not_freeze_but_the_product_on_it_does() -> None:
-    body = bar_body()
+@pytest.mark.parametrize("wall", [STEEL, WATER])
+def test_the_mould_does_not_freeze_but_the_product_on_it_does(wall: dict) -> None:
+    body = bar_body(wall=wall)
     seen = freezing(body)
     warm, cold = (np.empty(body.size) for _ in range(2))
     for part in body.parts:
