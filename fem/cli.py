@@ -100,7 +100,7 @@ def report(folder: Path, into: Path | None) -> None:
 @_SET
 @click.option("--json", "as_json", is_flag=True, help="Print it as JSON; text goes to standard error.")
 def check(case: Path, overrides: tuple[str, ...], as_json: bool) -> None:
-    """Read and mesh CASE and say what is known by hand; solve nothing."""
+    """Read and mesh CASE and say what is known without a run."""
     from fem.case.read import load
     from fem.estimate.outlook import outlook
     from fem.terminal import show_json, show_outlook

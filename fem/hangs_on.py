@@ -48,7 +48,7 @@ class HangsOn:
         said = case.uncertainty is not None
         product = {region: case.regions[region] for region in plan.body.domain.product}
         spreads = case.uncertainty if case.uncertainty is not None else usual_uncertainty(case, product)
-        inputs = [Input(key, spread, _default(plan, key)) for key, spread in spreads.items()]
+        inputs = [Input(key, spread, default_of(plan, key)) for key, spread in spreads.items()]
         return cls(plan, Sensitivity(plan, gauge, inputs), said) if inputs else None
 
     def begin_stage(self, stage: Stage, problem: HeatProblem, moment: Moment) -> None:
@@ -110,7 +110,7 @@ class HangsOn:
         return said
 
 
-def _default(plan: Plan, key: str) -> float | None:
+def default_of(plan: Plan, key: str) -> float | None:
     """Return what the program chose for a key that the case leaves out."""
     if not key.startswith("materials."):
         return None

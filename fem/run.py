@@ -25,6 +25,7 @@ from fem.plan import Plan
 from fem.result.folder import Result, RunFolder
 from fem.summary import Summary
 from fem.watch.arrival import Arrival
+from fem.watch.gauge import Gauge
 from fem.watch.record import Record
 
 log = logging.getLogger("fem.run")
@@ -130,7 +131,7 @@ def _steps(plan: Plan, record: Record, summary: Summary, hangs_on: HangsOn | Non
         problem = HeatProblem(plan.body, stage.surfaces, time, plan.span)
         for rows in record.begin_stage(problem, u):
             summary.add(rows)
-        ending = _Ending(stage, record, time, u)
+        ending = Ending(stage, record.gauge, time, u)
         if not ending.met:
             moment = begin(problem, time, u, plan.no_accounts(stage))
             landings = plan.landings(stage, time)
@@ -147,17 +148,28 @@ def _steps(plan: Plan, record: Record, summary: Summary, hangs_on: HangsOn | Non
         summary.end_stage(stage, time, u, ending.why, ending.met)
 
 
-class _Ending:
-    """Decides when a stage is over, and says why."""
+class Ending:
+    """Decides when a stage is over, and says why.
 
-    def __init__(self, stage: Stage, record: Record, began: float, u: Array):
+    Parameters
+    ----------
+    stage
+        What is to end.
+    gauge
+        Reads the temperatures that the stage's condition names.
+    began, u
+        When it began [s] and the unknowns then.
+
+    """
+
+    def __init__(self, stage: Stage, gauge: Gauge, began: float, u: Array):
         self.latest = began + stage.lasts
         self.why = "its time was up"
         self.arrival: Arrival | None = None
         self.met = False
         if stage.until is not None:
             until = stage.until
-            self.arrival = Arrival(lambda u: record.measure(u, until.at), until.temperature, until.below)
+            self.arrival = Arrival(lambda u: gauge.measure(u, until.at), until.temperature, until.below)
             self._said = f"{until.at} {'<=' if until.below else '>='} {until.temperature:g} degC"
             self.why = f"its time was up before {self._said}"
             self.met = self.arrival.lag(u) <= 0.0

@@ -121,9 +121,28 @@ class Sensitivity:
         if aim is None or arrival is None or arrival.time is None or self.effects.time is not None:
             return
         if step.before.time <= arrival.time <= step.after.time:
-            shift, pace = self._event(step, arrival.time, aim.at)
-            self.effects.time = self._began + shift
-            self.effects.pace = pace
+            self.effects.time, self.effects.pace = self.crossing(step, arrival.time, aim.at)
+
+    def crossing(self, step: Step, time: float, at: str) -> tuple[Array, float]:
+        """Return how the time at which a temperature passes a level moves with each input.
+
+        Parameters
+        ----------
+        step
+            The step that was carried last.
+        time
+            When it passes, inside the step [s].
+        at
+            "slowest", or the name of a watched point.
+
+        Returns
+        -------
+        Derivatives of that time per half-width [s], shape (inputs,), NaN where the temperature
+        stands still; and how fast it moves there [K/s].
+
+        """
+        shift, pace = self._event(step, time, at)
+        return self._began + shift, pace
 
     def end_stage(self, stage: Stage, step: Step | None, met: bool) -> None:
         """Close a stage: its end may move with an input too."""
@@ -192,11 +211,20 @@ class Sensitivity:
 def _twin_plan(plan: Plan, entry: Input) -> tuple[Plan, float]:
     """Return the case with an input moved by a hair, on the same mesh, and the hair."""
     for hair in (HAIR, -HAIR):
-        case = shifted(plan.case, entry.key, entry.spread, hair, entry.default)
-        body = _twin_body(plan, case, entry.key)
-        if body is not None:
-            return Plan(case, body), hair
+        twin = moved(plan, entry, hair)
+        if twin is not None:
+            return twin, hair
     raise ValueError(f'"{entry.key}" cannot be moved without meshing the piece anew')
+
+
+def moved(plan: Plan, entry: Input, by: float) -> Plan | None:
+    """Return the case with an input moved by a number of half-widths, on the same mesh.
+
+    None where its mesh would be another one.
+    """
+    case = shifted(plan.case, entry.key, entry.spread, by, entry.default)
+    body = _twin_body(plan, case, entry.key)
+    return None if body is None else Plan(case, body)
 
 
 def _twin_body(plan: Plan, case: Case, key: str) -> Body | None:

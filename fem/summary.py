@@ -198,10 +198,8 @@ class Summary:
         for e in self._compared():
             ratio, (low, high) = e.get("ratio"), e.get("band", (0.0, float("inf")))
             if ratio is not None and e["in_range"] and not low <= ratio <= high:
-                said.append(
-                    f"the time to the aim is {ratio:.2f} times the {e['method']} estimate, theory allows {low:g} to "
-                    f"{high:g}: look for a mistake in the case"
-                )
+                found = f"the time to the aim is {ratio:.2f} times the {e['method']} estimate"
+                said.append(f"{found}, theory allows {low:g} to {high:g}: look for a mistake in the case")
         return said
 
     def _aim(self) -> dict[str, Any] | None:

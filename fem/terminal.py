@@ -164,8 +164,8 @@ def show_refinement(refinement: Any, to_stderr: bool = False) -> None:
     console.print()
     for number, level in enumerate(refinement.levels, start=1):
         cells = " x ".join(f"{1e3 * size:.3g}" for size in dict.fromkeys(level.cell_m))
-        text = f"level {number}: cells of {cells} mm, {level.nodes} nodes, {level.steps} steps, {level.elapsed_s:.1f} s"
-        console.print(text, soft_wrap=True)
+        effort = f"{level.nodes} nodes, {level.steps} steps, {level.elapsed_s:.1f} s"
+        console.print(f"level {number}: cells of {cells} mm, {effort}", soft_wrap=True)
     for n in refinement.numbers:
         if n.order is None:
             console.print(

@@ -44,17 +44,7 @@ def load(path: str | Path, overrides: Sequence[str] = ()) -> Case:
         Every problem of the file and of the overrides.
 
     """
-    source = str(path)
-    try:
-        text = Path(path).read_bytes().decode("utf-8-sig")
-    except UnicodeDecodeError as error:
-        message = f"is not UTF-8 text (byte {error.start + 1}); save it as UTF-8"
-        raise CaseError(source, [Problem("file", message)]) from error
-    except (OSError, ValueError) as error:
-        folder = isinstance(error, IsADirectoryError)
-        message = "is a folder, not a case file" if folder else f"cannot be read: {_reason(error)}"
-        raise CaseError(source, [Problem("file", message)]) from error
-    return loads(text, source, Path(path).parent, overrides)
+    return loads(text_of(path), str(path), Path(path).parent, overrides)
 
 
 def loads(text: str, source: str = "<text>", folder: Path = Path(), overrides: Sequence[str] = ()) -> Case:
@@ -78,12 +68,12 @@ def loads(text: str, source: str = "<text>", folder: Path = Path(), overrides: S
 
     """
     written = text
-    tree = _parse(text, source)
+    tree = tree_of(text, source)
     if overrides:
         from fem.case.override import apply
 
         text = apply(text, overrides, source)
-        tree = _parse(text, source)
+        tree = tree_of(text, source)
     found: list[Note] = []
     parts = Parts(tree)
     title, stepping = _read(parts, folder, found)
@@ -114,7 +104,37 @@ def loads(text: str, source: str = "<text>", folder: Path = Path(), overrides: S
     return case
 
 
-def _parse(text: str, source: str) -> dict[str, Any]:
+def text_of(path: str | Path) -> str:
+    """Return the text of a file.
+
+    Raises
+    ------
+    CaseError
+        Where it cannot be read as UTF-8.
+
+    """
+    source = str(path)
+    try:
+        text = Path(path).read_bytes().decode("utf-8-sig")
+    except UnicodeDecodeError as error:
+        message = f"is not UTF-8 text (byte {error.start + 1}); save it as UTF-8"
+        raise CaseError(source, [Problem("file", message)]) from error
+    except (OSError, ValueError) as error:
+        folder = isinstance(error, IsADirectoryError)
+        message = "is a folder, not a case file" if folder else f"cannot be read: {_reason(error)}"
+        raise CaseError(source, [Problem("file", message)]) from error
+    return text
+
+
+def tree_of(text: str, source: str) -> dict[str, Any]:
+    """Return what a TOML text holds.
+
+    Raises
+    ------
+    CaseError
+        Where it is no TOML, with the line.
+
+    """
     try:
         tree = tomllib.loads(text)
     except RecursionError as error:

@@ -73,6 +73,9 @@ def _work_out(plan: Plan, product: Material, stage: Stage, end: float) -> dict[s
     limit = found.time(product.latent_heat(end), T_f)
     remarks = [f"the latent heat alone, exactly, takes {limit:.4g} s from a liquid at its freezing point"]
     remarks += _stefan(product, found.coolant, T_f, end, limit)
+    inputs = [f"frozen conductivity {k:.3g} W/m/K, its mean down to the coolant"]
+    if len(conductivity) > len(plan.body.domain.product):
+        inputs.append("the heat that walls hold is left out")
     doubts = _doubts(plan, product, stage, films, found.coolant, end)
     return {
         "method": METHOD,
@@ -80,7 +83,7 @@ def _work_out(plan: Plan, product: Material, stage: Stage, end: float) -> dict[s
         "limit_s": limit,
         "in_range": not doubts,
         "band": list(BAND),
-        "remarks": [*remarks, *doubts, f"frozen conductivity {k:.3g} W/m/K, its mean down to the coolant"],
+        "remarks": [*remarks, *doubts, *inputs],
     }
 
 

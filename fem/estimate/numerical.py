@@ -64,7 +64,7 @@ def numerical_error(plan: Plan, own: Mapping[str, Any], twin: Mapping[str, Any])
     """
     mesh, how = 0.0, "half the difference to a run on cells twice as wide with half as many steps"
     if isinstance(plan.case.shape, MeshShape):
-        how = "half the difference to a run with half as many steps, and the mesh's share from one Poisson solve"
+        how = "half the difference to a run with half as many steps, the mesh's share from one Poisson solve"
         share = _mesh_share(plan)
         if share is None:
             unknown = (

@@ -17,7 +17,7 @@ def coarse_cells(shape: Slab | Rod | Ring | Bar) -> tuple[float, float]:
     cells = shape.cells()
     if isinstance(shape, Bar):
         band = shape.smallest / 4.0
-        across = band / max(2, round(_rows(band, cells[0]) / 2))
+        across = band / max(1, round(_rows(band, cells[0]) / 2))
         return across, across
     (left, low), (right, high) = shape.box()
     across, along = right - left, high - low

@@ -37,7 +37,7 @@ STRIDE = 6e3
 COARSE = (0.5e-3, 0.25e-3, 0.125e-3)
 # Where the curve bends at the front without a jump, the isotherm of a cell is known to a third
 # of the cell and not better.
-FINE = (0.32e-3, 0.16e-3, 0.08e-3)
+FINE = (0.24e-3, 0.12e-3, 0.06e-3)
 
 WATER = SharpFreezing(k_s=2.2, c_s=2050.0, k_l=0.56, c_l=4200.0, rho=1000.0, latent_heat=334e3, T_m=0.0)
 WIDE = RangeFreezing(

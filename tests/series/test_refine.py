@@ -68,7 +68,7 @@ def test_the_error_of_a_recipes_front_is_within_what_is_stated() -> None:
         true = 1e3 * float(law.front(-6.0, np.array([time]))[0])
         assert abs(n.value - true) <= n.error, n
         assert abs(n.as_run - true) <= n.as_run_error, n
-        assert n.error < 0.02 * true
+        assert n.error < 0.03 * true
 
 
 @pytest.mark.parametrize("ste", [0.1, 0.2, 0.5])
@@ -93,16 +93,15 @@ def test_the_error_of_a_cylinders_total_time_is_within_what_is_stated(ste: float
 
 
 def test_a_small_bar_is_refined_in_cells_and_steps_together() -> None:
-    found = refine(small())
+    case = small("shape.cell=0.75 mm")
+    found = refine(case)
     coarse, middle, fine = found.levels
-    assert coarse.nodes < middle.nodes / 3 < fine.nodes / 9
+    assert coarse.nodes < middle.nodes / 2 < fine.nodes / 4
     assert coarse.steps < middle.steps < fine.steps
     assert [level.cell_m[0] / fine.cell_m[0] for level in found.levels] == pytest.approx([4, 2, 1])
     assert coarse.tolerance / middle.tolerance == pytest.approx(8)
     time = number(found.numbers, "time to the aim")
-    assert time.as_run == pytest.approx(
-        run(small(), numerical_error=False).summary["aim"]["time_s"], rel=1e-9
-    )
+    assert time.as_run == pytest.approx(run(case, numerical_error=False).summary["aim"]["time_s"], rel=1e-9)
     assert 0.0 < time.error < 0.01 * time.value
     assert {n.quantity.split(" at ")[0] for n in found.numbers} == {
         "time to the aim",
@@ -183,10 +182,10 @@ def test_levels_that_agree_state_the_least_error() -> None:
 @pytest.mark.parametrize(
     ("name", "true"),
     [
-        # Runs on a quarter of the cells with a 64th of the tolerance, frames landed on as in the case.
-        ("tube_in_brine", 963.24),
+        # Runs on cells of a third or a quarter with a 64th of the tolerance or less.
+        ("tube_in_brine", 963.29),
         ("tube_in_blast", 2986.67),
-        ("tube_at_home", 19272.2),
+        ("tube_at_home", 19270.6),
         ("workshop_bar", 1157.49),
         ("factory_bar", 410.82),
         ("fruit_bar", 1254.13),
