@@ -112,11 +112,15 @@ def bends_of(
 
 def ranking(inputs: Sequence[Input], slopes: Array, bends: Sequence[Bend]) -> list[dict[str, Any]]:
     """Return the inputs, the most important first: key, half-width, its effects and plain words."""
-    order = np.argsort(-np.abs(np.nan_to_num(slopes)), kind="stable")
+    ends = [
+        [float(b.effect(float(s), np.array(by))) for by in (-1.0, 1.0)]
+        for s, b in zip(slopes, bends, strict=True)
+    ]
+    # By the width between both ends, which is what a reader sees: a slope alone leaves out the bend.
+    order = np.argsort([-abs(high - low) for low, high in np.nan_to_num(ends)], kind="stable")
     out = []
     for i in order:
-        entry, slope = inputs[i], float(slopes[i])
-        low, high = (float(bends[i].effect(slope, np.array(by))) for by in (-1.0, 1.0))
+        entry, slope, (low, high) = inputs[i], float(slopes[i]), ends[i]
         out.append(
             {
                 "key": entry.key,

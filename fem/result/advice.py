@@ -12,6 +12,8 @@ from typing import Any
 from pydantic_core import PydanticCustomError
 
 from fem.quantity import COEFFICIENT, LENGTH, TEMPERATURE, Kind
+from fem.result.answer import duration
+from fem.result.confidence import known, time_range
 from fem.result.contents import Contents
 
 # Pieces and metal below this can freeze to lips and skin.
@@ -203,39 +205,70 @@ def assumptions(contents: Contents) -> list[str]:
 
 
 def checks(contents: Contents) -> list[str]:
-    """Return what to look at in the plant before the answer is relied on."""
+    """Return what to look at in the plant before the answer is relied on.
+
+    Where the run carried along what its time hangs on, its own numbers are said; else the trade's.
+    """
     summary, case = contents.summary, contents.case
-    said = []
     met = [
         c for c in contacts(case) if c.exchange == "fluid" and c.coolant is not None and c.coolant[0] < 0.0
     ]
-    if temperatures := [c.coolant for c in met if c.coolant is not None]:
-        said.append(
-            f"Coolant at the mould, not at the chiller: the case takes {_range(temperatures)} degC. Hang a "
-            "loose probe between the moulds; 1 to 2 K off the log is usual."
-        )
-    if coefficients := [c.h for c in met if c.h is not None]:
-        what = "Stirring" if any(c.liquid for c in met) else "Air speed"
-        said.append(
-            f"{what}: the case takes h = {_range(coefficients)} W/m2/K, seldom known better than by a "
-            "factor of 1.5. One logged run in the worst place settles it."
-        )
+    said = _coolant(met, summary) + _coefficient(met, summary)
     if thickness := _size(case):
         low, high = 100 * 0.5 / thickness, 200 * 0.5 / thickness
-        said.append(
-            f"Thickness by calliper: drawn as {thickness:g} mm; half a millimetre more takes {low:.0f} to "
-            f"{high:.0f} % more time."
-        )
+        usual = f"half a millimetre more takes {low:.0f} to {high:.0f} % more time"
+        own = _cost(summary, ("thickness", "radius"), "more")
+        said.append(f"Thickness by calliper: drawn as {thickness:g} mm; {own or usual}.")
     x, y = (1e3 * v for v in summary["slowest"]["at_m"][:2])
     said.append(
         f"Probe: its tip belongs at ({x:.1f}, {y:.1f}) mm. A tip 2 to 3 mm off reads cold too early; use "
         "two and believe the later one."
     )
-    if _table(case, "piece").get("section") == "plane" and any(c.liquid for c in met):
+    if (
+        _table(case, "piece").get("section") == "plane"
+        and any(c.liquid for c in met)
+        and not any("level" in caution for caution in summary["cautions"])
+    ):
         said.append("Level: mix above the level of the coolant stays soft long after this section is hard.")
     if thin := _thin(summary):
         said.append(thin)
     return said
+
+
+def _coolant(met: list[Contact], summary: dict[str, Any]) -> list[str]:
+    temperatures = [c.coolant for c in met if c.coolant is not None]
+    if not temperatures:
+        return []
+    own = _cost(summary, ("coolant",), "warmer")
+    return [
+        f"Coolant at the mould, not at the chiller: the case takes {_range(temperatures)} degC. Hang a "
+        "loose probe between the moulds; 1 to 2 K off the log is usual" + (f", and {own}." if own else ".")
+    ]
+
+
+def _coefficient(met: list[Contact], summary: dict[str, Any]) -> list[str]:
+    coefficients = [c.h for c in met if c.h is not None]
+    if not coefficients:
+        return []
+    what = "Stirring" if any(c.liquid for c in met) else "Air speed"
+    doubt = _cost(summary, ("h",), "less") or "seldom known better than by a factor of 1.5"
+    return [
+        f"{what}: the case takes h = {_range(coefficients)} W/m2/K; {doubt}. One logged run in the worst "
+        "place settles it."
+    ]
+
+
+def _cost(summary: dict[str, Any], words: tuple[str, ...], which: str) -> str:
+    """Say by how much later the aim is met at the bad end of an input, from the run; empty if not known.
+
+    Of several inputs of one kind, as in stages, the one that costs most.
+    """
+    found = []
+    for entry in (summary.get("uncertainty") or {}).get("inputs") or []:
+        cost = known(entry["effect_of_less_s" if which == "less" else "effect_of_more_s"])
+        if entry["key"].rsplit(".", 1)[-1] in words and cost is not None and cost > 0.0:
+            found.append((cost, f"{entry['half_width']} {which} costs {duration(cost)}"))
+    return max(found, default=(0.0, ""))[1]
 
 
 def _thin(summary: dict[str, Any]) -> str:
@@ -243,6 +276,11 @@ def _thin(summary: dict[str, Any]) -> str:
     if aim is None or aim["time_s"] is None or aim["within_s"] is None:
         return ""
     margin = 100.0 * (aim["within_s"] - aim["time_s"]) / aim["within_s"]
+    if (spread := time_range(summary)) is not None:
+        if not spread[0] <= aim["within_s"] < spread[1]:
+            return ""
+        late = duration(spread[1] - aim["within_s"])
+        return f"Margin of {margin:.0f} %: the late end of the likely range misses the time given by {late}."
     if not 0.0 <= margin < 12.0:
         return ""
     return (

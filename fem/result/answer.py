@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 UNFINISHED = "running"
@@ -37,7 +38,8 @@ def sentence(summary: dict[str, Any], *, with_place: bool = False) -> str:
         if aim["at"] == "slowest":
             text += f": it ends at {last:.1f} degC"
         return text + (f"; no, {duration(aim['within_s'])} is not enough." if aim["within_s"] else ".")
-    return f"{who} reaches {reach} after {duration(aim['time_s'])}{_likely(summary)}{_verdict(aim)}{_knob(summary)}."
+    found = f"{duration(aim['time_s'])}{_likely(summary)}"
+    return f"{who} reaches {reach} after {found}{_verdict(aim)}{_knob(summary)}."
 
 
 def _likely(summary: dict[str, Any]) -> str:
@@ -49,7 +51,7 @@ def _likely(summary: dict[str, Any]) -> str:
 def _knob(summary: dict[str, Any]) -> str:
     """Say what the time hangs on first."""
     inputs = (summary.get("uncertainty") or {}).get("inputs")
-    return f"; it hangs on {inputs[0]['name']} first" if inputs else ""
+    return f"; it hangs on {input_names(inputs)[0]} first" if inputs else ""
 
 
 def span(low: float, high: float) -> str:
@@ -118,12 +120,35 @@ def ranking(summary: dict[str, Any], width: int = 12) -> list[tuple[str, str, st
     Name, half-width, a bar of its effect and plain words.
     """
     inputs = (summary.get("uncertainty") or {}).get("inputs") or []
-    sizes = [max(abs(entry["effect_of_less_s"]), abs(entry["effect_of_more_s"])) for entry in inputs]
+    effects = [(entry["effect_of_less_s"], entry["effect_of_more_s"]) for entry in inputs]
+    # A derivative that could not be taken is NaN, or null in other hands' files.
+    sizes = [max(abs(v) if v is not None and v == v else 0.0 for v in both) for both in effects]
     most = max(sizes, default=0.0) or 1.0
     return [
-        (entry["name"], f"+-{entry['half_width']}", "#" * max(1, round(width * size / most)), entry["words"])
-        for entry, size in zip(inputs, sizes, strict=True)
+        (name, f"+-{entry['half_width']}", "#" * max(1, round(width * size / most)), entry["words"])
+        for name, entry, size in zip(input_names(inputs), inputs, sizes, strict=True)
     ]
+
+
+def input_names(inputs: Sequence[Mapping[str, Any]]) -> list[str]:
+    """Return what the uncertain inputs are called; those of one name with stage and surface, or their key.
+
+    >>> keys = ("stages.dip.surfaces.outside.h", "stages.hold.surfaces.outside.h", "shape.thickness")
+    >>> input_names([{"key": k, "name": n} for k, n in zip(keys, ("agitation", "agitation", "thickness"))])
+    ['agitation (dip)', 'agitation (hold)', 'thickness']
+    """
+    names = [str(entry["name"]) for entry in inputs]
+    parts = [str(entry["key"]).split(".") for entry in inputs]
+    for pick in (slice(1, 2), slice(1, -1)):
+        told = [
+            f"{name} ({', '.join(p for p in part[pick] if p != 'surfaces')})"
+            if names.count(name) > 1
+            else name
+            for name, part in zip(names, parts, strict=True)
+        ]
+        if len(set(told)) == len(told):
+            break
+    return told
 
 
 def duration(seconds: float) -> str:

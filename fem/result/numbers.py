@@ -8,11 +8,13 @@ from typing import Any
 import numpy as np
 
 from fem.result.answer import duration
+from fem.result.confidence import by_rank, error_text, known, ratio_of
 from fem.result.folder import Array
 
 # What the page shows in places of its own, and what says nothing by itself.
 _SHOWN = {"schema", "title", "outcome", "why", "aim", "slowest", "heat_removed_J", "heat_J", "mass_kg"}
 _SHOWN |= {"energy_imbalance", "time_s", "stages", "effort", "cautions", "versions", "estimates"}
+_SHOWN |= {"uncertainty", "numerical_error"}
 
 
 def aim_text(aim: Mapping[str, Any]) -> str:
@@ -38,13 +40,14 @@ def verdict(summary: Mapping[str, Any]) -> dict[str, str]:
     return {"word": "Yes, just" if thin else "Yes", "tone": "thin" if thin else "good"}
 
 
-def tiles(summary: Mapping[str, Any]) -> list[tuple[str, str]]:
-    """Return the few numbers that people quote, each with its label."""
+def tiles(summary: Mapping[str, Any], answered: bool = False) -> list[tuple[str, str]]:
+    """Return the few numbers that people quote, each with its label; without the time if that is said."""
     aim, found = summary["aim"], []
-    if aim is not None:
+    if aim is not None and not answered:
         found.append(
             ("time to the aim", duration(aim["time_s"]) if aim["time_s"] is not None else "not reached")
         )
+    if aim is not None:
         if aim["within_s"] is not None:
             found.append(("time given", duration(aim["within_s"])))
         if aim["within_s"] is not None and aim["time_s"] is not None:
@@ -91,23 +94,58 @@ def loads(curves: Mapping[str, Array]) -> list[dict[str, Any]]:
 
 
 def estimates(summary: Mapping[str, Any]) -> list[dict[str, Any]]:
-    """Return the hand estimates beside the run's own time."""
-    aim = summary["aim"]
-    own = aim["time_s"] if aim is not None else None
+    """Return the estimates beside the run's own time."""
     rows = []
-    for estimate in summary.get("estimates") or []:
+    for estimate in by_rank(summary.get("estimates") or []):
         time, remarks = estimate["time_s"], estimate.get("remarks") or []
-        share = 100 * (time / own - 1) if own and time is not None else None
+        band = estimate.get("band")
         rows.append(
             {
                 "method": estimate["method"],
                 "time": duration(time) if time is not None else "–",
-                "share": share,
+                "ratio": ratio_of(summary, estimate) if time is not None else None,
+                "band": f"{band[0]:g} to {band[1]:g} allowed" if band and estimate.get("in_range") else "",
                 "in_range": estimate.get("in_range"),
                 "remarks": remarks if isinstance(remarks, str) else "; ".join(remarks),
             }
         )
     return rows
+
+
+def stages(summary: Mapping[str, Any]) -> list[dict[str, Any]]:
+    """Return the stage ends; each number with its half-width, empty where it has none to show."""
+    uncertainty = summary.get("uncertainty") or {}
+    widths = {entry["name"]: entry for entry in uncertainty.get("stages") or []}
+    rows = []
+    for stage in summary["stages"]:
+        width = widths.get(stage["name"], {})
+        ended = known(width.get("ended_s_half_width")) or 0.0
+        # What ended the stage is the same however the inputs lie.
+        held = stage["why"].startswith("slowest") and stage["why"].endswith("was reached")
+        slowest = "" if held else _half(width.get("slowest_degC_half_width"), 1)
+        rows.append(
+            {
+                **stage,
+                "ended_half": f"± {error_text(ended)}" if ended >= 0.5 else "",
+                "slowest_half": slowest,
+                "mean_half": _half(width.get("mean_degC_half_width"), 1),
+            }
+        )
+    return rows
+
+
+def heat_half_width(summary: Mapping[str, Any]) -> str:
+    """Return the half-width of the heat removed by the last stage's end [kJ]; empty where not known."""
+    uncertainty, ended = summary.get("uncertainty") or {}, summary["stages"]
+    widths = {entry["name"]: entry for entry in uncertainty.get("stages") or []}
+    width = known(widths.get(ended[-1]["name"], {}).get("heat_removed_J_half_width")) if ended else None
+    return _half(width / 1e3, 2) if width is not None else ""
+
+
+def _half(width: float | None, digits: int) -> str:
+    """Return a half-width with so many decimals; empty where it is not known or rounds to nothing."""
+    size = known(width)
+    return f"± {size:.{digits}f}" if size is not None and round(size, digits) > 0.0 else ""
 
 
 def further(summary: Mapping[str, Any]) -> list[tuple[str, str]]:

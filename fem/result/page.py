@@ -13,6 +13,7 @@ from fem.result.answer import duration
 _HERE = Path(__file__).parent
 _DEGREES = re.compile(r"(?<=[\d ])degC\b")
 _MINUS = re.compile(r"(?<![\w.\-])-(?=\d)")
+_SPAN = re.compile(r"(?<=\d)-(?=[\d.]+ (?:s|min|h)\b)")
 _UNIT = re.compile(r"(?<=\d) (?=(?:°C|%|mm|min|kJ|kW|W|K|J|g|h|s)\b|%)")
 
 
@@ -51,7 +52,10 @@ def typeset(text: str) -> str:
 
     >>> typeset("reaches -12 degC after 19.3 min").replace(chr(160), "_")
     'reaches −12_°C after 19.3_min'
+    >>> typeset("likely 16-24 min").replace(chr(160), "_")
+    'likely 16–24_min'
     """
+    text = _SPAN.sub("\N{EN DASH}", text)
     text = _MINUS.sub("\N{MINUS SIGN}", _DEGREES.sub("°C", text)).replace("<=", "≤").replace(">=", "≥")
     return _UNIT.sub("\N{NO-BREAK SPACE}", text)
 

@@ -6,16 +6,17 @@ from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING, Any
 
 from fem.result.answer import duration, input_names
-from fem.result.confidence import known, own_time, ratio_of, time_range
+from fem.result.confidence import BOUND, by_rank, known, own_time, ratio_of, time_range
 from fem.result.drawing import BLACK, GREY, LINES, WIDTH, drawing, label_of, svg_text
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
 
 MOST_INPUTS = 8
+MOST_ESTIMATES = 5
 LESS, MORE = LINES[5], LINES[1]
 RANGE = "#b9d3e6"
-ROW = 0.36  # inches
+ROW = 0.33  # inches
 
 
 def height(summary: Mapping[str, Any]) -> float:
@@ -53,12 +54,12 @@ def times(summary: Mapping[str, Any]) -> str:
         if spread is not None:
             low, high = (x / scale for x in spread)
             ax.barh(0, high - low, left=low, height=0.42, color=RANGE, zorder=2)
-            for x, side in ((low, "right"), (high, "left")):
-                shift = (-3 if side == "right" else 3, 0)
-                note = dict(xytext=shift, textcoords="offset points", ha=side, va="center", size=7.5)
-                ax.annotate(f"{x:.3g}", (x, 0), color=BLACK, **note)
+            _beside(ax, (low, 0), f"{low:.3g}", left=True)
+            _beside(ax, (high, 0), f"{high:.3g}")
         error = known((summary.get("numerical_error") or {}).get("time_s")) or 0.0
-        ax.errorbar(own / scale, 0, xerr=error / scale, fmt="o", ms=5, color=BLACK, capsize=3, lw=1.2, zorder=5)
+        ax.errorbar(
+            own / scale, 0, xerr=error / scale, fmt="o", ms=5, color=BLACK, capsize=3, lw=1.2, zorder=5
+        )
         for row, estimate in enumerate(estimates, start=1):
             _estimate(ax, row, estimate, ratio_of(summary, estimate), scale)
         if given:
@@ -73,19 +74,24 @@ def times(summary: Mapping[str, Any]) -> str:
 def effects(summary: Mapping[str, Any]) -> str:
     """Draw what each uncertain input does to the time, the most important first; returns SVG text."""
     inputs = _inputs(summary)[:MOST_INPUTS]
-    named = dict(zip(map(id, _all_inputs(summary)), input_names(_all_inputs(summary)), strict=True))
+    names = input_names(_inputs(summary))
     sizes = [abs(v) for e in inputs for v in _both(e)]
     most = max(sizes, default=0.0)
     scale, unit = (1.0, "s") if most < 600.0 else _unit(most)
+    labels = [f"{label_of(n)} ± {e['half_width']}" for n, e in zip(names, inputs, strict=False)]
     with drawing() as figure_of:
         figure = figure_of((WIDTH, height(summary)))
         ax = figure.add_subplot()
-        _rows(ax, [f"{label_of(named[id(e)])} ± {e['half_width']}" for e in inputs], [e["words"] for e in inputs])
-        for colour, word, which in ((LESS, "less", 0), (MORE, "more", 1)):
+        _rows(ax, labels, [e["words"] for e in inputs])
+        for colour, word, which in ((LESS, "lower", 0), (MORE, "higher", 1)):
             lengths = [_both(e)[which] / scale for e in inputs]
-            ax.barh(range(len(inputs)), lengths, height=0.5, color=colour, label=f"{word} of it", zorder=2)
+            ax.barh(range(len(inputs)), lengths, height=0.5, color=colour, label=word, zorder=2)
         for row, entry in enumerate(inputs):
             _label_ends(ax, row, [v / scale for v in _both(entry)])
+            if known(entry["effect_of_less_s"]) is None and known(entry["effect_of_more_s"]) is None:
+                _beside(ax, (0.0, row), "not known")
+            elif _both(entry) == (0.0, 0.0):
+                _beside(ax, (0.0, row), "none")
         reach = 1.32 * max(most / scale, 1e-9)
         ax.set_xlim(-reach, reach)
         ax.axvline(0.0, color=BLACK, lw=0.8, zorder=3)
@@ -94,18 +100,8 @@ def effects(summary: Mapping[str, Any]) -> str:
         return svg_text(figure)
 
 
-def _all_inputs(summary: Mapping[str, Any]) -> list[dict[str, Any]]:
-    return list((summary.get("uncertainty") or {}).get("inputs") or [])
-
-
 def _inputs(summary: Mapping[str, Any]) -> list[dict[str, Any]]:
-    """Return the inputs, that with the widest effect first."""
-
-    def width(entry: Mapping[str, Any]) -> float:
-        less, more = _both(entry)
-        return -abs(more - less)
-
-    return sorted(_all_inputs(summary), key=width)
+    return list((summary.get("uncertainty") or {}).get("inputs") or [])
 
 
 def _both(entry: Mapping[str, Any]) -> tuple[float, float]:
@@ -113,15 +109,18 @@ def _both(entry: Mapping[str, Any]) -> tuple[float, float]:
 
 
 def _estimates(summary: Mapping[str, Any]) -> list[dict[str, Any]]:
-    return [e for e in summary.get("estimates") or [] if e["time_s"] is not None and e["time_s"] > 0][:5]
+    found = by_rank(summary.get("estimates") or [])
+    return [e for e in found if e["time_s"] is not None and e["time_s"] > 0.0][:MOST_ESTIMATES]
 
 
 def _estimate(ax: Axes, row: int, estimate: Mapping[str, Any], ratio: float | None, scale: float) -> None:
     """Draw an estimate: where the run's own time may lie by it, hollow where it does not hold."""
     at, colour = estimate["time_s"] / scale, LINES[0]
     if ratio is not None and estimate.get("in_range") and (band := estimate.get("band")) is not None:
-        ax.plot([at * band[0], at * band[1]], [row, row], color=colour, lw=2.0, solid_capstyle="butt", zorder=3)
-    marker = ">" if estimate["method"] == "Plank" else "D"
+        ax.plot(
+            [at * band[0], at * band[1]], [row, row], color=colour, lw=2.0, solid_capstyle="butt", zorder=3
+        )
+    marker = ">" if estimate["method"] == BOUND else "D"
     inside = colour if estimate.get("in_range") else "white"
     ax.plot(at, row, marker, ms=5.5, mfc=inside, mec=colour, mew=1.2, zorder=4)
 
@@ -143,21 +142,23 @@ def _pass_line(ax: Axes, at: float, said: str) -> None:
 
 def _label_ends(ax: Axes, row: int, ends: Sequence[float]) -> None:
     """Write the values at the ends of two bars that leave 0."""
-    if ends[0] == ends[1] == 0.0:
-        ax.annotate("hardly", (0.0, row), xytext=(4, 0), textcoords="offset points", va="center", size=7.5)
-        return
     for value in ends:
-        left = value < 0.0
-        ax.annotate(
-            f"{value:+.3g}".replace("-", "−"),
-            (value, row),
-            xytext=(-3 if left else 3, 0),
-            textcoords="offset points",
-            ha="right" if left else "left",
-            va="center",
-            color=BLACK,
-            size=7.5,
-        )
+        if value != 0.0:
+            _beside(ax, (value, row), f"{value:+.3g}".replace("-", "−"), left=value < 0.0)
+
+
+def _beside(ax: Axes, place: tuple[float, float], said: str, left: bool = False) -> None:
+    """Write a text to the right or to the left of a place."""
+    ax.annotate(
+        said,
+        place,
+        xytext=(-3 if left else 3, 0),
+        textcoords="offset points",
+        ha="right" if left else "left",
+        va="center",
+        color=BLACK,
+        size=7.5,
+    )
 
 
 def _rows(ax: Axes, labels: Sequence[str], words: Sequence[str] = ()) -> None:

@@ -9,8 +9,9 @@ from typing import Any, NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
-from fem.result import advice, map_pictures, numbers, pictures
+from fem.result import advice, map_pictures, numbers, pictures, range_pictures
 from fem.result.answer import duration, sentence
+from fem.result.confidence import answers, known, own_time, time_range
 from fem.result.contents import Contents, read_contents
 from fem.result.disk import replace
 from fem.result.folder import Array
@@ -72,12 +73,16 @@ def _content(run: Contents, limits: Limits) -> dict[str, Any]:
         "summary": summary,
         "answer": sentence(summary, with_place=True),
         "verdict": numbers.verdict(summary),
-        "tiles": numbers.tiles(summary),
-        "figures": _figures(run, left_out),
+        "answers": answers(summary),
+        "tiles": numbers.tiles(summary, answered=bool(answers(summary))),
+        "figures": [*_confidence(summary, left_out), *_figures(run, left_out)],
         "maps": maps,
         "maps_at": frame.time if frame is not None else None,
         "left_out": left_out,
+        "stages": numbers.stages(summary),
         "regions": numbers.regions(summary),
+        "heat_half": numbers.heat_half_width(summary),
+        "heat_error": known((summary.get("numerical_error") or {}).get("heat_removed_J")),
         "loads": numbers.loads(run.curves),
         "estimates": numbers.estimates(summary),
         "assumptions": advice.assumptions(run),
@@ -89,6 +94,43 @@ def _content(run: Contents, limits: Limits) -> dict[str, Any]:
         "case_lines": lines,
         "aim_text": numbers.aim_text(aim) if aim is not None else "",
     }
+
+
+def _confidence(summary: dict[str, Any], left_out: list[str]) -> list[dict[str, Any]]:
+    """Draw how sure the time is, and what it hangs on."""
+    uncertainty, own = summary.get("uncertainty"), own_time(summary)
+    figures: list[dict[str, Any]] = []
+    if own is None:
+        return []
+    if time_range(summary) is not None or any(e["time_s"] for e in summary.get("estimates") or []):
+        parts = ["Dot: this run"]
+        if time_range(summary) is not None:
+            parts.append("pale bar: where it lies 19 times in 20")
+        parts.append("diamonds: estimates, with the band that theory allows; hollow: outside their range")
+        figures.append(
+            {
+                "title": "The time, beside what it can be held against",
+                "svg": range_pictures.times(summary),
+                "alt": f"Time to the aim, its range and its estimates. {sentence(summary)}",
+                "caption": "; ".join(parts) + ".",
+            }
+        )
+    if uncertainty is None or not uncertainty["inputs"]:
+        left_out.append("Likely range, and what the time hangs on: this run carried none along.")
+        return figures
+    more = len(uncertainty["inputs"]) - range_pictures.MOST_INPUTS
+    figures.append(
+        {
+            "title": "What the time hangs on",
+            "svg": range_pictures.effects(summary),
+            "alt": "Change of the time with each input: "
+            + "; ".join(e["words"] for e in uncertainty["inputs"]),
+            "caption": f"Each input at the ends of its interval, which are what {uncertainty['source']}."
+            + (f" {more} more matter less." if more > 0 else ""),
+            "remarks": uncertainty.get("remarks") or [],
+        }
+    )
+    return figures
 
 
 def _figures(run: Contents, left_out: list[str]) -> list[dict[str, str]]:

@@ -97,7 +97,7 @@ class Variation(BaseModel):
             if not self.options:
                 return [Problem("options", "is empty; give one set of overrides at least")]
             return [
-                Problem(f"options.{name}", "is empty; write \"dotted.key\" = value")
+                Problem(f"options.{name}", 'is empty; write "dotted.key" = value')
                 for name, entry in self.options.items()
                 if not entry
             ]
@@ -117,7 +117,9 @@ class Variation(BaseModel):
             if raw is None:
                 found.append(Problem(name, "is missing: a range has two ends"))
             elif end is None:
-                found.append(Problem(name, f'must be a number with its unit, such as "-22 degC", got {raw!r}'))
+                found.append(
+                    Problem(name, f'must be a number with its unit, such as "-22 degC", got {raw!r}')
+                )
             else:
                 ends.append(end)
         if self.count is not None and self.count < 2:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 
-from fem.series import exact_cases
+from fem.series import truth
 from fem.series.verdict import Verdict, judge
 
 # Five cell sizes a few per cent apart put the nodes at five places of the front's last cell.
@@ -20,5 +20,5 @@ def verify(offsets: Sequence[float] = OFFSETS) -> Iterator[Verdict]:
         Factors on the cell sizes; the worst of them is judged.
 
     """
-    for check in exact_cases.CHECKS:
+    for check in truth.CHECKS:
         yield from judge(check, offsets)

@@ -14,8 +14,9 @@ from fem.mesh.build import build
 from fem.mesh.level import coarse_cells
 from fem.mesh.shape import Bar, MeshShape
 from fem.run import run
-from fem.series import exact_cases as exact
 from fem.series.refine import Refined, extrapolate, refine
+from fem.series.truth import plane
+from fem.series.truth import texts as exact
 from tests.conftest import CASES
 from tests.pieces import SMALL, small
 
@@ -23,7 +24,7 @@ STANDARD = 'accuracy = "standard"'
 
 
 def text(*args: object, **keys: object) -> str:
-    return exact._text(*args, **keys).replace('accuracy = "tight"', STANDARD)  # type: ignore[arg-type]
+    return exact.text(*args, **keys).replace('accuracy = "tight"', STANDARD)  # type: ignore[arg-type]
 
 
 def number(numbers: tuple[Refined, ...], name: str) -> Refined:
@@ -51,7 +52,7 @@ def judged_fronts(case: str) -> list[tuple[float, Refined]]:
 def test_the_error_of_neumanns_front_is_within_what_is_stated() -> None:
     # Carslaw & Jaeger 1959, section 11.2 (form from memory).
     law = Neumann(exact.WATER, -25.0, 5.0)
-    for time, n in judged_fronts(wall(exact._melting(exact.WATER), "freezing point", 0.5e-3)):
+    for time, n in judged_fronts(wall(exact.melting(exact.WATER), "freezing point", 0.5e-3)):
         true = 1e3 * float(law.front(np.array([time]))[0])
         assert abs(n.value - true) <= n.error, n
         assert abs(n.as_run - true) <= n.as_run_error, n
@@ -60,11 +61,11 @@ def test_the_error_of_neumanns_front_is_within_what_is_stated() -> None:
 
 def test_the_error_of_a_recipes_front_is_within_what_is_stated() -> None:
     """The similarity solution for the recipe's own curves."""
-    mix = loads(wall(exact.RECIPE, "-6 degC", 1e-3)).materials["material"].build()
+    mix = loads(wall(plane.RECIPE, "-6 degC", 1e-3)).materials["material"].build()
     from fem.exact import Similarity
 
     law = Similarity(mix.curve.enthalpy, mix.curve.conductivity, -25.0, 5.0, breaks=mix.curve.T)
-    for time, n in judged_fronts(wall(exact.RECIPE, "-6 degC", 0.5e-3)):
+    for time, n in judged_fronts(wall(plane.RECIPE, "-6 degC", 0.5e-3)):
         true = 1e3 * float(law.front(-6.0, np.array([time]))[0])
         assert abs(n.value - true) <= n.error, n
         assert abs(n.as_run - true) <= n.as_run_error, n
@@ -80,7 +81,7 @@ def test_the_error_of_a_cylinders_total_time_is_within_what_is_stated(ste: float
     case = text(
         'section = "axisymmetric"\nstart_temperature = "0 degC"',
         f'form = "rod"\nradius = "{radius} m"\nheight = "2 mm"\ncell = ["0.5 mm", "2 mm"]',
-        exact._melting(water),
+        exact.melting(water),
         {"side": f'exchange = "fixed"\ntemperature = "{T_w} degC"'},
         1.2 * total,
         "",
@@ -119,6 +120,7 @@ def test_a_mesh_file_is_split_and_keeps_its_names() -> None:
     for region, area in file.areas.items():
         assert halves.areas[region] == pytest.approx(area, rel=1e-12)
     for surface in file.surfaces:
+        assert len(np.unique(halves.surfaces[surface])) == 2 * len(file.surfaces[surface])
         assert halves.edge_areas(surface).sum() == pytest.approx(file.edge_areas(surface).sum(), rel=1e-12)
     assert halves.quality > 0.5 * file.quality
 

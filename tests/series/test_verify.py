@@ -3,7 +3,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from fem.series.exact_cases import CHECKS
+from fem.series.truth import CHECKS
 from fem.series.verdict import Bound, Check, Sample, judge
 
 # Fewer offsets than the command takes, the first and one between, to keep the suite short.
