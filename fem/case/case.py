@@ -12,7 +12,8 @@ from pydantic import BaseModel, ConfigDict, Field, PlainValidator, WithJsonSchem
 from fem.errors import Problem, Refused
 from fem.heat.exchange import Exchange
 from fem.march.control import Stepping
-from fem.mesh.shape import Section, Shape
+from fem.mesh.form import Section
+from fem.mesh.shape import Shape
 from fem.quantity import TEMPERATURE, Duration, Length, Temperature
 from fem.watch.schedule import Watch
 

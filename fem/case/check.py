@@ -11,7 +11,8 @@ from pydantic_core import PydanticCustomError
 from fem.case.case import Aim, Piece, Stage
 from fem.case.wording import Note
 from fem.errors import unknown
-from fem.mesh.shape import SHAPES, Box, MeshShape, Shape
+from fem.mesh.form import Box
+from fem.mesh.shape import SHAPES, MeshShape, Shape
 from fem.quantity import DURATION
 from fem.watch.schedule import SLOWEST, Watch
 

@@ -6,73 +6,17 @@ is named in a comment.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import Any
 
-from pydantic_core import PydanticCustomError
-
-from fem.quantity import COEFFICIENT, LENGTH, TEMPERATURE, Kind
 from fem.result.answer import duration
-from fem.result.confidence import known, time_range
+from fem.result.confidence import error_text, known, time_range
+from fem.result.contacts import Contact, contacts, size, table
 from fem.result.contents import Contents
 
 # Pieces and metal below this can freeze to lips and skin.
 COLD_BURN = -25.0
-# Below this no still or moving air goes: what cools is a liquid.
-LIQUID = 80.0
 # Eutectic of sodium chloride brine (brine as a refrigerant: encyclopaedia article).
 EUTECTIC = -21.1
-
-
-@dataclass(frozen=True)
-class Contact:
-    """What one surface meets in one stage.
-
-    Parameters
-    ----------
-    stage, surface, exchange
-        Names as the case has them.
-    coolant
-        Lowest and highest temperature of fluid, wall or surroundings [degC]; None where not given.
-    h
-        Lowest and highest heat transfer coefficient [W/m2/K]; None where not given.
-
-    """
-
-    stage: str
-    surface: str
-    exchange: str
-    coolant: tuple[float, float] | None
-    h: tuple[float, float] | None
-
-    @property
-    def liquid(self) -> bool:
-        """Whether a cold liquid must be at work."""
-        return self.exchange == "fluid" and self.h is not None and self.h[1] >= LIQUID
-
-
-def contacts(case: dict[str, Any]) -> list[Contact]:
-    """Return what every surface meets in every stage; what cannot be read is left out."""
-    found = []
-    stages = case.get("stages")
-    for stage in stages if isinstance(stages, list) else []:
-        surfaces = _table(stage, "surfaces")
-        for surface, entry in surfaces.items():
-            if not isinstance(entry, dict):
-                continue
-            around = next(
-                (entry[k] for k in ("coolant", "temperature", "surroundings", "air") if k in entry), None
-            )
-            found.append(
-                Contact(
-                    str(stage.get("name", "")),
-                    surface,
-                    str(entry.get("exchange", "")),
-                    _extent(around, TEMPERATURE),
-                    _extent(entry.get("h"), COEFFICIENT),
-                )
-            )
-    return found
 
 
 def coldest(contents: Contents, seen: float | None) -> float:
@@ -90,21 +34,6 @@ def coldest(contents: Contents, seen: float | None) -> float:
         return seen
     around = [c.coolant[0] for c in contacts(contents.case) if c.coolant is not None]
     return min([*around, float(contents.summary["slowest"]["temperature_degC"])])
-
-
-def is_axisymmetric(case: dict[str, Any]) -> bool:
-    """Return whether a case's coordinates are (r, z)."""
-    return bool(_table(case, "piece").get("section") == "axisymmetric")
-
-
-def freezing_regions(case: dict[str, Any]) -> set[str]:
-    """Return the regions whose material can freeze."""
-    materials = _table(case, "materials")
-    return {
-        region
-        for region, name in _table(case, "regions").items()
-        if isinstance(name, str) and _table(materials, name).get("kind") not in (None, "plain")
-    }
 
 
 def cautions(contents: Contents, lowest: float) -> list[str]:
@@ -145,7 +74,7 @@ def cautions(contents: Contents, lowest: float) -> list[str]:
             "Plants for this cold mostly run on ammonia or carbon dioxide: poisonous, or stifling unseen, "
             "under pressure. Keep to the alarms, the ventilation and the escape plan of the site."
         )
-    if _table(contents.case, "shape").get("form") != "bar":
+    if table(contents.case, "shape").get("form") != "bar":
         said.append(
             "Where the piece is a sealed pack, leave 8 to 10 % of its volume empty: water grows as it "
             "freezes and an overfilled pack bursts. Never use glass."
@@ -173,12 +102,12 @@ def assumptions(contents: Contents) -> list[str]:
     """Return what the numbers take for granted, and what they do not cover."""
     case = contents.case
     said = []
-    section = _table(case, "piece").get("section")
+    section = table(case, "piece").get("section")
     if section == "plane":
         said.append("A plane section: no heat along the length, so the ends are left out.")
     elif section == "axisymmetric":
         said.append("A body of revolution: the same all the way round.")
-    materials = _table(case, "materials")
+    materials = table(case, "materials")
     kinds = {m.get("kind") for m in materials.values() if isinstance(m, dict)}
     if "recipe" in kinds:
         said.append(
@@ -214,7 +143,7 @@ def checks(contents: Contents) -> list[str]:
         c for c in contacts(case) if c.exchange == "fluid" and c.coolant is not None and c.coolant[0] < 0.0
     ]
     said = _coolant(met, summary) + _coefficient(met, summary)
-    if thickness := _size(case):
+    if thickness := size(case):
         low, high = 100 * 0.5 / thickness, 200 * 0.5 / thickness
         usual = f"half a millimetre more takes {low:.0f} to {high:.0f} % more time"
         own = _cost(summary, ("thickness", "radius"), "more")
@@ -225,7 +154,7 @@ def checks(contents: Contents) -> list[str]:
         "two and believe the later one."
     )
     if (
-        _table(case, "piece").get("section") == "plane"
+        table(case, "piece").get("section") == "plane"
         and any(c.liquid for c in met)
         and not any("level" in caution for caution in summary["cautions"])
     ):
@@ -267,7 +196,7 @@ def _cost(summary: dict[str, Any], words: tuple[str, ...], which: str) -> str:
     for entry in (summary.get("uncertainty") or {}).get("inputs") or []:
         cost = known(entry["effect_of_less_s" if which == "less" else "effect_of_more_s"])
         if entry["key"].rsplit(".", 1)[-1] in words and cost is not None and cost > 0.0:
-            found.append((cost, f"{entry['half_width']} {which} costs {duration(cost)}"))
+            found.append((cost, f"{entry['half_width']} {which} costs {error_text(cost)}"))
     return max(found, default=(0.0, ""))[1]
 
 
@@ -288,41 +217,9 @@ def _thin(summary: dict[str, Any]) -> str:
     )
 
 
-def _size(case: dict[str, Any]) -> float | None:
-    """Return the size across which the heat goes [mm], where the shape states one."""
-    shape = _table(case, "shape")
-    factor = {"thickness": 1e3, "radius": 2e3}
-    for key, scale in factor.items():
-        extent = _extent(shape.get(key), LENGTH)
-        if extent is not None and extent[1] < 0.5:
-            return float(f"{scale * extent[1]:.4g}")
-    return None
-
-
-def _extent(raw: Any, kind: Kind) -> tuple[float, float] | None:
-    """Return the lowest and highest value of a signal as a case writes it."""
-    try:
-        if isinstance(raw, dict):
-            column = _table(raw, "value")
-            values = column.get("values")
-            if not isinstance(values, list) or not values:
-                return None
-            read = [kind.read(f"{v} {column.get('unit', '')}") for v in values]
-            return min(read), max(read)
-        value = kind.read(raw)
-    except PydanticCustomError:
-        return None
-    return value, value
-
-
 def _range(extents: list[tuple[float, float]]) -> str:
     low, high = min(e[0] for e in extents), max(e[1] for e in extents)
     return f"{low:.4g}" if low == high else f"{low:.4g} to {high:.4g}"
-
-
-def _table(tables: Any, key: str) -> dict[str, Any]:
-    found = tables.get(key) if isinstance(tables, dict) else None
-    return found if isinstance(found, dict) else {}
 
 
 def _sentence(text: str) -> str:

@@ -11,7 +11,7 @@ import os
 import shutil
 from collections.abc import Mapping
 from pathlib import Path
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -113,6 +113,51 @@ class HdfFrames:
 
         # A viewer that has the file open must not stop the run.
         return h5py.File(self._path, mode, locking=False)
+
+
+class LastStep(NamedTuple):
+    """The last frame of a file: its time [s], the mesh, the values at the points, and what stands beside."""
+
+    time: float
+    points: NDArray[Any]
+    cells: NDArray[Any]
+    region: NDArray[Any]
+    values: dict[str, NDArray[Any]]
+    about: dict[str, Any]
+
+
+def read_last(path: Path) -> LastStep:
+    """Read the last frame, without vtk.
+
+    Raises
+    ------
+    OSError, LookupError, TypeError, ValueError, RuntimeError
+        Where the file is damaged or holds no frame.
+
+    """
+    import h5py
+
+    # A run that is still going on writes to the file.
+    with h5py.File(path, "r", locking=False) as file:
+        root = file["VTKHDF"]
+        steps = root["Steps"]
+        last = int(steps.attrs["NSteps"]) - 1
+        if last < 0:
+            raise ValueError("no frame")
+        points = root["Points"][:]
+        corners = int(root["Offsets"][1])
+        values = {}
+        for name, dataset in root["PointData"].items():
+            place = int(steps[f"PointDataOffsets/{name}"][last])
+            values[name] = dataset[place : place + len(points)]
+        about = {
+            name: [t.decode() if isinstance(t, bytes) else t for t in root[f"FieldData/{name}"][:]]
+            for name in root["FieldData"]
+        }
+        cells = root["Connectivity"][:].reshape(-1, corners)
+        return LastStep(
+            float(steps["Values"][last]), points, cells, root["CellData/region"][:], values, about
+        )
 
 
 def _put_about(group: Any, name: str, values: NDArray[Any]) -> None:

@@ -1,10 +1,12 @@
-"""The last field frame of a run folder, read through meshio."""
+"""The last field frame of a run folder: VTU through meshio, VTKHDF through h5py."""
 
 from __future__ import annotations
 
 import struct
 import zlib
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
+from importlib.util import find_spec
 from pathlib import Path
 from typing import Any
 from xml.etree import ElementTree
@@ -13,8 +15,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fem.result.folder import Array
+from fem.result.hdf import HDF, read_last
 
-CORNERS = {"triangle": 3, "quad": 4}
+PVD = "fields.pvd"
+CORNERS = ("triangle", "quad")
 
 
 class NoMaps(Exception):
@@ -56,8 +60,25 @@ class Frame:
     frozen_through: float | None = None
 
 
+# What a truncated or a garbled file does to its reader: none of it is worth more than a sentence.
+DAMAGE = (
+    ElementTree.ParseError,
+    zlib.error,
+    struct.error,
+    ArithmeticError,
+    AssertionError,
+    AttributeError,
+    LookupError,
+    OSError,
+    RuntimeError,
+    TypeError,
+    ValueError,
+    MemoryError,
+)
+
+
 def last_frame(folder: Path) -> Frame:
-    """Read the last frame that ``fields.pvd`` names.
+    """Read the last frame of a run folder.
 
     Raises
     ------
@@ -65,34 +86,42 @@ def last_frame(folder: Path) -> Frame:
         Where there is none, or it cannot be read.
 
     """
+    if not (folder / PVD).exists() and (folder / HDF).exists():
+        return _last_of_hdf(folder / HDF)
     time, path = _last_entry(folder)
+    name = str(path.relative_to(folder))
     if not path.is_file():
-        raise NoMaps(f"fields.pvd names {path.relative_to(folder)}, which is not in the folder")
+        raise NoMaps(f"{PVD} names {name}, which is not in the folder")
     import meshio
 
     try:
         read = _read(path)
-    # What a truncated or a garbled file does to the reader: none of it is worth more than a sentence.
-    except (
-        meshio.ReadError,
-        ElementTree.ParseError,
-        zlib.error,
-        struct.error,
-        ArithmeticError,
-        AssertionError,
-        AttributeError,
-        LookupError,
-        OSError,
-        TypeError,
-        ValueError,
-        MemoryError,
-    ) as error:
-        raise NoMaps(f"{path.relative_to(folder)} cannot be read: it is cut short or damaged") from error
+    except (meshio.ReadError, *DAMAGE) as error:
+        raise _damaged(name) from error
     if "region" not in read.cell_data:
-        raise NoMaps(f'{path.relative_to(folder)} has no cell array "region"')
-    if not any(block.type in CORNERS for block in read.cells):
-        raise NoMaps(f"{path.relative_to(folder)} holds no triangles or quadrilaterals")
-    return _frame(time, read)
+        raise NoMaps(f'{name} has no cell array "region"')
+    cells = [
+        (np.asarray(block.data), np.asarray(numbers))
+        for block, numbers in zip(read.cells, read.cell_data["region"], strict=True)
+        if block.type in CORNERS
+    ]
+    return _frame(name, time, read.points, cells, read.point_data, read.field_data)
+
+
+def _last_of_hdf(path: Path) -> Frame:
+    """Read the last frame of the one file that holds them all."""
+    if find_spec("h5py") is None:
+        raise NoMaps(f'{path.name} needs h5py to be read (pip install "rimefront[vtkhdf]")')
+    try:
+        time, points, cells, region, values, about = read_last(path)
+    # On a damaged file h5py raises whatever its library comes upon, and all of that is one of these.
+    except DAMAGE as error:
+        raise _damaged(path.name) from error
+    return _frame(path.name, time, points, [(cells, region)], values, about)
+
+
+def _damaged(name: str) -> NoMaps:
+    return NoMaps(f"{name} cannot be read: it is cut short or damaged")
 
 
 def _read(path: Path) -> Any:
@@ -116,52 +145,61 @@ def _read(path: Path) -> Any:
 
 
 def _last_entry(folder: Path) -> tuple[float | None, Path]:
-    index = folder / "fields.pvd"
+    index = folder / PVD
     if not index.exists():
-        raise NoMaps("fields.pvd is not in the folder")
+        raise NoMaps(f'neither {PVD} nor {HDF} is in the folder (a run with watch.fields = "none" has none)')
     try:
         sets = list(ElementTree.parse(index).getroot().iter("DataSet"))
     except (ElementTree.ParseError, OSError) as error:
-        raise NoMaps("fields.pvd cannot be read: it is cut short or damaged") from error
+        raise NoMaps(f"{PVD} cannot be read: it is cut short or damaged") from error
     if not sets:
-        raise NoMaps("fields.pvd names no frame")
+        raise NoMaps(f"{PVD} names no frame")
     try:
         times = [float(s.get("timestep", "nan")) for s in sets]
         last = sets[int(np.argmax(times))] if np.all(np.isfinite(times)) else sets[-1]
         time = float(last.get("timestep", "nan"))
     except ValueError:
-        raise NoMaps("fields.pvd holds a timestep that is no number") from None
+        raise NoMaps(f"{PVD} holds a timestep that is no number") from None
     path = (folder / last.get("file", "")).resolve()
     if not path.is_relative_to(folder.resolve()):
-        raise NoMaps("fields.pvd names a file outside the run folder; it was left alone")
+        raise NoMaps(f"{PVD} names a file outside the run folder; it was left alone")
     return (time if np.isfinite(time) else None), folder / path.relative_to(folder.resolve())
 
 
-def _frame(time: float | None, mesh: Any) -> Frame:
-    points = np.asarray(mesh.points, dtype=float)[:, :2]
+def _frame(
+    name: str,
+    time: float | None,
+    points: Any,
+    cells: Sequence[tuple[NDArray[Any], NDArray[Any]]],
+    arrays: Mapping[str, Any],
+    about: Mapping[str, Any],
+) -> Frame:
+    """Make a frame of what a file holds: points, blocks of cells with their regions, values at the points."""
+    if not cells:
+        raise NoMaps(f"{name} holds no triangles or quadrilaterals")
+    points = np.asarray(points, dtype=float)[:, :2]
     triangles, regions, edges, sides = [], [], [], []
-    for block, numbers in zip(mesh.cells, mesh.cell_data["region"], strict=True):
-        if block.type not in CORNERS:
-            continue
-        t, number = np.asarray(block.data, dtype=np.int64), np.asarray(numbers).astype(np.int64).ravel()
-        n = CORNERS[block.type]
+    for corners, numbers in cells:
+        t, number = np.asarray(corners, dtype=np.int64), np.asarray(numbers).astype(np.int64).ravel()
+        n = t.shape[1]
         triangles += [t[:, [0, i, i + 1]] for i in range(1, n - 1)]
         regions += [number] * (n - 2)
         edges += [t[:, [i, (i + 1) % n]] for i in range(n)]
         sides += [number] * n
     t, region = np.vstack(triangles), np.concatenate(regions)
-    if t.size == 0 or t.min() < 0 or t.max() >= len(points) or not np.all(np.isfinite(points)):
+    fits = len(t) == len(region) and t.size > 0 and t.min() >= 0 and t.max() < len(points)
+    if not fits or not np.all(np.isfinite(points)):
         raise NoMaps("the last frame's cells do not fit its points: it was changed or damaged")
-    values = {name: np.asarray(v, dtype=float) for name, v in mesh.point_data.items()}
-    through = np.ravel(np.asarray(mesh.field_data.get("local_freezing_to_degC", np.nan), dtype=float))
+    values = {key: np.asarray(v, dtype=float) for key, v in arrays.items()}
+    through = np.ravel(np.asarray(about.get("local_freezing_to_degC", np.nan), dtype=float))
     return Frame(
         time,
         points,
         t,
         region,
         _outline(np.vstack(edges), np.concatenate(sides)),
-        {name: v for name, v in values.items() if v.shape == (len(points),)},
-        tuple(map(str, mesh.field_data.get("region_names", ()))),
+        {key: v for key, v in values.items() if v.shape == (len(points),)},
+        tuple(map(str, about.get("region_names", ()))),
         float(through[0]) if through.size and np.isfinite(through[0]) else None,
     )
 

@@ -144,7 +144,8 @@ def _label_ends(ax: Axes, row: int, ends: Sequence[float]) -> None:
     """Write the values at the ends of two bars that leave 0."""
     for value in ends:
         if value != 0.0:
-            _beside(ax, (value, row), f"{value:+.3g}".replace("-", "−"), left=value < 0.0)
+            text = f"{value:+.0f}" if abs(value) >= 10.0 else f"{value:+.2g}"
+            _beside(ax, (value, row), text.replace("-", "−"), left=value < 0.0)
 
 
 def _beside(ax: Axes, place: tuple[float, float], said: str, left: bool = False) -> None:

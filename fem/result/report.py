@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from fem.result import advice, map_pictures, numbers, pictures, range_pictures
 from fem.result.answer import duration, sentence
 from fem.result.confidence import answers, known, own_time, time_range
+from fem.result.contacts import freezing_regions, is_axisymmetric
 from fem.result.contents import Contents, read_contents
 from fem.result.disk import replace
 from fem.result.folder import Array
@@ -200,7 +201,7 @@ _FREEZING = _Map(
 def _maps(run: Contents, frame: Frame, limits: Limits) -> tuple[list[dict[str, Any]], list[str]]:
     """Draw the last frame; return the maps and what was left out."""
     product = _product(run, frame)
-    axes = ("r", "z") if advice.is_axisymmetric(run.case) else ("x", "y")
+    axes = ("r", "z") if is_axisymmetric(run.case) else ("x", "y")
     x, y = (1e3 * v for v in run.summary["slowest"]["at_m"][:2])
     drawn, left_out = [], []
     for wanted in (_TEMPERATURE, _ICE, _FREEZING._replace(label=f"time to {_end(frame)} in min")):
@@ -247,7 +248,7 @@ def _end(frame: Frame) -> str:
 def _product(run: Contents, frame: Frame) -> NDArray[np.bool_]:
     """Return which triangles are product: those whose region freezes, or all if that is not known."""
     names = frame.names or tuple(run.summary["heat_J"])
-    frozen = advice.freezing_regions(run.case)
+    frozen = freezing_regions(run.case)
     inside = np.isin(frame.region, [n for n, name in enumerate(names) if name in frozen])
     return inside if inside.any() else np.ones_like(inside)
 

@@ -15,8 +15,8 @@ import numpy as np
 
 from fem.case.case import Case
 from fem.case.read import loads
+from fem.mesh.drawn import MOST_SPLITS, MeshShape
 from fem.mesh.level import coarse_cells
-from fem.mesh.shape import MOST_SPLITS, MeshShape
 from fem.result.folder import Result
 from fem.run import run
 

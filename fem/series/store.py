@@ -17,7 +17,7 @@ from pydantic import BaseModel
 
 from fem.case.case import Case
 from fem.errors import CaseError
-from fem.result.folder import SUMMARY, open_run
+from fem.result.folder import open_run
 from fem.series.variations import Keep
 
 RUNS = "runs"
@@ -50,7 +50,7 @@ def key_of(case: Case, keep: Keep) -> str:
         What the folder will hold.
 
     """
-    content = {"case": _plain(case), "keep": keep.model_dump(exclude={"reports"}), "program": program()}
+    content = {"case": _plain(case), "keep": keep.model_dump(), "program": program()}
     text = json.dumps(content, sort_keys=True, ensure_ascii=False, separators=(",", ":"))
     return hashlib.sha256(text.encode()).hexdigest()[:20]
 

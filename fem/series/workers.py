@@ -65,9 +65,9 @@ class Processes(Generic[T, R]):
         """
         again: list[T] = []
         try:
-            self._workers = [_Worker(self._work) for _ in range(self._count)]
             # One task is made ready while the processes are busy.
             ahead = next(tasks, None)
+            self._workers = [_Worker(self._work) for _ in range(self._count if ahead is not None else 0)]
             while True:
                 for worker in self._workers:
                     if worker.task is None and ahead is not None:

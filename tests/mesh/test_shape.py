@@ -8,8 +8,9 @@ import numpy as np
 import pytest
 from pydantic import ValidationError
 
+from fem.mesh.form import CELLS_ACROSS
 from fem.mesh.grid import Grid
-from fem.mesh.shape import CELLS_ACROSS, SHAPES, Bar, MeshShape, Ring, Rod, Slab
+from fem.mesh.shape import SHAPES, Bar, MeshShape, Ring, Rod, Slab
 
 SQUARE = Grid(
     np.array([[0.0, 19.0, 19.0, 0.0], [0.0, 0.0, 19.0, 19.0]]),
