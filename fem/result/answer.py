@@ -92,6 +92,7 @@ def details(summary: dict[str, Any]) -> list[tuple[str, str]]:
     if slowest:
         place = f"{_place(summary)}, at {slowest['temperature_degC']:.1f} degC when the run ended"
         lines.append(("slowest point", place))
+    lines += _agreement(summary)
     for region, heat in summary.get("heat_J", {}).items():
         mass = summary["mass_kg"][region]
         lines.append((f"heat of the {region}", f"{heat / 1e3:.2f} kJ from {1e3 * mass:.1f} g a piece"))
@@ -112,6 +113,27 @@ def details(summary: dict[str, Any]) -> list[tuple[str, str]]:
         lines.append(("effort", f"{text}, {effort['elapsed_s']:.1f} s"))
     lines += [("caution", caution) for caution in summary.get("cautions", [])]
     return lines
+
+
+def _agreement(summary: dict[str, Any]) -> list[tuple[str, str]]:
+    """Return how far the time is from the exact one of its model, and what other methods say."""
+    lines = []
+    time = (summary.get("aim") or {}).get("time_s")
+    error = (summary.get("numerical_error") or {}).get("time_s")
+    if time and error is not None:
+        lines.append(("numerical error", f"{error:.1f} s, {100 * error / time:.1g} % of the time"))
+    methods = [e for e in summary.get("estimates") or [] if e.get("time_s")]
+    if methods:
+        lines.append(("by other methods", ", ".join(_by_method(e) for e in methods)))
+    return lines
+
+
+def _by_method(estimate: dict[str, Any]) -> str:
+    """Say what another method makes of the case."""
+    time = duration(estimate["time_s"])
+    if any("lower bound" in remark for remark in estimate["remarks"]):
+        return f"at least {time} ({estimate['method']})"
+    return f"{time} ({estimate['method']}" + (")" if estimate["in_range"] else ", outside its range)")
 
 
 def ranking(summary: dict[str, Any], width: int = 12) -> list[tuple[str, str, str, str]]:
