@@ -19,6 +19,9 @@ from fem.watch.record import Record
 
 # A logged signal has a row every few seconds: landing on each would cost more than it is worth.
 MOST_KNOTS = 50
+# Mass of one piece [kg], far beyond what is moulded (25 to 150 mL; common practice, no source): a
+# drawing in inches read as millimetres ends outside.
+USUAL_MASS = (5e-3, 1.0)
 
 
 @dataclass(frozen=True, eq=False)
@@ -172,6 +175,10 @@ class Plan:
                     f"{region}: the run goes from {self.span[0]:.4g} to {self.span[1]:.4g} degC, "
                     f"the properties hold from {low:.4g} to {high:.4g} degC"
                 )
+        masses = self.body.masses()
+        mass = sum(masses[region] for region in self.body.domain.product)
+        if self.case.aim is not None and not USUAL_MASS[0] <= mass <= USUAL_MASS[1]:
+            said.append(f"one piece holds {1e3 * mass:.3g} g: see whether the drawing's unit was read right")
         if self.case.shape.form == "bar":
             said.append(
                 "the section across the bar leaves out its ends: true at mid-height and below the coolant's "
