@@ -84,9 +84,12 @@ class HangsOn:
             )
         if effects.time is None or arrival is None or arrival.time is None:
             return out
+        if not np.all(np.isfinite(effects.time)):
+            out["remarks"] = ["the temperature stands still where the aim is met: its time has no range"]
+            return out
         spread = range_of(arrival.time, effects.time, bends)
         out["time_s"] = spread.as_dict()
-        out["inputs"] = ranking(inputs, effects.time, bends)
+        out["inputs"] = ranking(inputs, effects.time, bends, values)
         out["remarks"] = self._remarks(bends, spread.high - spread.low, arrival.time)
         return out
 

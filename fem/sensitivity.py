@@ -154,7 +154,7 @@ class Sensitivity:
             shift, _ = self._event(step, step.after.time, stage.until.at)
         else:
             shift = np.array([(t.case.stages[n].lasts - stage.lasts) / hair for t, hair in self._twins])
-        self._du = self._tangents.du + step.after.u_rate[:, None] * shift
+        self._du = self._tangents.du + self._rate(step, step.after.time)[:, None] * shift
         self._began = self._began + shift
         u = step.after.u
         self.effects.stages.append(
@@ -170,20 +170,25 @@ class Sensitivity:
         """Return how a crossing moves with each input on the stage's clock [s], and its pace [K/s]."""
         assert self._tangents is not None
         u, _ = step.at(time)
-        pace = self._pace(step, time, at)
+        reach = 1e-3 * step.size
+        pace = (
+            self.gauge.measure(u + reach * self._rate(step, time), at) - self.gauge.measure(u, at)
+        ) / reach
         change = self._change(u, self._tangents.at(step, time), lambda g, v: g.measure(v, at))
         return (-change / pace if pace else np.full(len(self.inputs), np.nan)), pace
 
-    def _pace(self, step: Step, time: float, at: str) -> float:
-        """Return how fast a temperature moves at a time in a step [K/s].
+    def _rate(self, step: Step, time: float) -> Array:
+        """Return how fast the unknowns move at a time in a step [J/m3/s].
 
         From the states themselves, as a parabola through the last three: the rate at one node
         carries what the iteration of the step has left, which the states hardly do.
         """
         moments = [m for m in (self._earlier, step.before, step.after) if m is not None]
         t = np.array([m.time for m in moments]) - time
-        T = [self.gauge.measure(m.u, at) for m in moments]
-        return float(np.polyfit(t, T, len(t) - 1)[-2])
+        # Weights of the derivative at 0 of the polynomial through these times.
+        powers = np.vander(t, increasing=True).T
+        weights = np.linalg.solve(powers, np.eye(len(t))[1])
+        return np.asarray(weights @ np.array([m.u for m in moments]))
 
     def _change(self, u: Array, du: Array, read: Callable[[Gauge, Array], float]) -> Array:
         """Return the derivative of anything that is read off the unknowns."""

@@ -110,7 +110,9 @@ def bends_of(
     return out
 
 
-def ranking(inputs: Sequence[Input], slopes: Array, bends: Sequence[Bend]) -> list[dict[str, Any]]:
+def ranking(
+    inputs: Sequence[Input], slopes: Array, bends: Sequence[Bend], values: Sequence[float | None]
+) -> list[dict[str, Any]]:
     """Return the inputs, the most important first: key, half-width, its effects and plain words."""
     ends = [
         [float(b.effect(float(s), np.array(by))) for by in (-1.0, 1.0)]
@@ -124,11 +126,11 @@ def ranking(inputs: Sequence[Input], slopes: Array, bends: Sequence[Bend]) -> li
         out.append(
             {
                 "key": entry.key,
-                "name": name_of(entry.key),
+                "name": name_of(entry.key, values[i]),
                 "half_width": said(entry),
                 "effect_of_less_s": low,
                 "effect_of_more_s": high,
-                "words": words(entry, slope),
+                "words": words(entry, slope, name_of(entry.key, values[i])),
             }
         )
     return out
@@ -137,7 +139,7 @@ def ranking(inputs: Sequence[Input], slopes: Array, bends: Sequence[Bend]) -> li
 NAMES = {
     "h": "agitation",
     "coolant": "coolant temperature",
-    "surroundings": "temperature around",
+    "surroundings": "room temperature",
     "temperature": "surface temperature",
     "air": "air temperature",
     "thickness": "thickness",
@@ -153,9 +155,15 @@ NAMES = {
 }
 
 
-def name_of(key: str) -> str:
-    """Return what an input is called in a sentence."""
+# A film below this is air's: a liquid coolant that is stirred at all does better [W/m2/K].
+AIR = 80.0
+
+
+def name_of(key: str, value: float | None = None) -> str:
+    """Return what an input is called in a sentence; what moves h depends on its size."""
     word = key.rsplit(".", 1)[1]
+    if word == "h" and value is not None and value < AIR:
+        return "air speed"
     return NAMES.get(word, word.replace("_", " "))
 
 
@@ -167,21 +175,20 @@ def said(entry: Input) -> str:
     return f"{entry.spread.size * factor:.3g} {unit}"
 
 
-def words(entry: Input, slope: float) -> str:
+def words(entry: Input, slope: float, name: str) -> str:
     """Return what a round step of an input buys or costs, in plain words."""
-    step, text, by = _round_step(entry)
+    step, text, by = _round_step(entry, name)
     change = slope * by
     more = "buys" if change < 0 else "costs"
     if abs(change) < 0.05:
-        return f"{step} of {name_of(entry.key)} hardly matter"
+        return f"{step} of {name} hardly matter"
     return (
         f"{text} {more} {abs(change):.0f} s" if abs(change) >= 10.0 else f"{text} {more} {abs(change):.2g} s"
     )
 
 
-def _round_step(entry: Input) -> tuple[str, str, float]:
+def _round_step(entry: Input, name: str) -> tuple[str, str, float]:
     """Return a round step, its sentence, and how many half-widths it is."""
-    name = name_of(entry.key)
     if entry.spread.relative:
         return "10 %", f"10 % more {name}", 0.10 / entry.spread.size
     unit, factor = _unit(entry.key)

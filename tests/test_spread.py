@@ -5,7 +5,7 @@ import pytest
 
 from fem.case.shift import Spread
 from fem.sensitivity import Input
-from fem.spread import Bend, bends_of, range_of, ranking, words
+from fem.spread import Bend, bends_of, name_of, range_of, ranking, words
 
 H = Input("stages.freeze.surfaces.outside.h", Spread(0.3, relative=True))
 COOLANT = Input("stages.freeze.surfaces.outside.coolant", Spread(1.5, relative=False))
@@ -44,7 +44,7 @@ def test_the_range_is_the_same_in_every_run() -> None:
 
 
 def test_the_most_important_input_stands_first_whatever_its_sign() -> None:
-    rows = ranking([THICKNESS, H], np.array([30.0, -158.0]), [Bend(), Bend(0.3)])
+    rows = ranking([THICKNESS, H], np.array([30.0, -158.0]), [Bend(), Bend(0.3)], [0.022, 250.0])
     assert [row["name"] for row in rows] == ["agitation", "thickness"]
 
 
@@ -58,4 +58,9 @@ def test_the_most_important_input_stands_first_whatever_its_sign() -> None:
     ],
 )
 def test_plain_words(entry: Input, slope: float, said: str) -> None:
-    assert words(entry, slope) == said
+    assert words(entry, slope, name_of(entry.key)) == said
+
+
+def test_what_moves_h_depends_on_its_size() -> None:
+    assert name_of(H.key, 250.0) == "agitation"
+    assert name_of(H.key, 30.0) == "air speed"
