@@ -23,7 +23,7 @@ COMMANDS = {
     "rimefront run --no-report": ["run", str(CASE), "--no-report", "--overwrite", "--into"],
     "rimefront run": ["run", str(CASE), "--overwrite", "--into"],
 }
-WATCHED = ("numpy", "scipy.sparse", "scipy.linalg", "skfem", "pydantic", "pint", "pyamg", "qdldl", "pyvista", "fem.run")
+WATCHED = ("numpy", "scipy.sparse", "skfem", "pydantic", "pint", "pyamg", "qdldl", "pyvista", "fem.run")
 
 
 def main() -> None:

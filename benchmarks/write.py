@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import tempfile
 import time
+from functools import partial
 from pathlib import Path
 
 from table import Tables, options
@@ -47,7 +48,7 @@ def _costs(cell: float) -> list[list[float | str]]:
             for frame in range(1, 21):
                 # A field that changes: a constant one would be compressed to nothing.
                 u = plan.start * (1.0 + 0.01 * frame * np.hypot(*body.domain.points) / 0.03)
-                times.append(_seconds(lambda: fields.end_stage(60.0 * frame, u)))
+                times.append(_seconds(partial(fields.end_stage, 60.0 * frame, u)))
                 sizes.append(_size(folder))
         # The middle one of the frames: the first opens, and the machine disturbs a few.
         cost = float(np.median(times[2:]))

@@ -131,6 +131,131 @@ def refine(case: Path, overrides: tuple[str, ...], as_json: bool) -> None:
 
 
 @rimefront.command()
+@click.argument("plan", type=click.Path(path_type=Path))
+@click.option("--into", type=click.Path(path_type=Path), help="Folder to write; by default sweeps/PLAN.")
+@click.option("--processes", type=click.IntRange(min=1), help="How many; by default one per processor.")
+@click.option("--cluster", metavar="ADDRESS", help="dask.distributed scheduler to run on: tcp://HOST:8786.")
+@click.option("--json", "as_json", is_flag=True, help="Print sweep.json; text goes to standard error.")
+def sweep(plan: Path, into: Path | None, processes: int | None, cluster: str | None, as_json: bool) -> None:
+    """Run every case of PLAN that has not been run yet, and draw the operating window."""
+    from fem.series.sweep import sweep as sweep_plan
+    from fem.series.sweep_plan import read_plan
+    from fem.terminal import SweepProgress, show_json, show_sweep
+
+    read = read_plan(plan)
+    with SweepProgress() as progress:
+        swept = sweep_plan(read, into, processes=processes, cluster=cluster, progress=progress)
+    if as_json:
+        show_json(swept.summary)
+    show_sweep(swept, to_stderr=as_json)
+    if swept.failed:
+        raise SystemExit(PART_FAILED)
+
+
+@rimefront.command()
+@_CASE
+@_SET
+@click.option("--vary", required=True, metavar="KEY", help="Dotted key of the quantity to set.")
+@click.option("--between", required=True, nargs=2, metavar="A B", help='Interval: "-30 degC" "-15 degC".')
+@click.option("--with-margin", is_flag=True, help="Meet the aim at the unfavourable end of the time's range.")
+@click.option("--json", "as_json", is_flag=True, help="Print it as JSON; text goes to standard error.")
+def setpoint(
+    case: Path,
+    overrides: tuple[str, ...],
+    vary: str,
+    between: tuple[str, str],
+    with_margin: bool,
+    as_json: bool,
+) -> None:
+    """Find the value of an input with which CASE just meets its aim."""
+    from rich.console import Console
+
+    from fem.answers import show_setpoint
+    from fem.case.read import load
+    from fem.series.setpoint import setpoint as find
+    from fem.terminal import show_json
+
+    read = load(case, overrides)
+    with Console(stderr=True).status("") as status:
+        found = find(read, vary, between, with_margin=with_margin, progress=status.update)
+    if as_json:
+        show_json(found.as_dict())
+    show_setpoint(found, case, to_stderr=as_json)
+
+
+@rimefront.command()
+@_CASE
+@_SET
+@click.option("--log", "logs", required=True, multiple=True, help="A thermocouple's log; may be repeated.")
+@click.option(
+    "--fit", "fitted", multiple=True, help="h (default), freezing_point, conductivity_factor, a key."
+)
+@click.option("--point", "points", multiple=True, help="Watched point of each log; by default the first.")
+@click.option("--column", "columns", multiple=True, help="Column of each log that holds several probes.")
+@click.option("--pour", metavar="TIME", help='When the mix was poured: "14:03:20" or "35 s" into the log.')
+@click.option("--unit", help="Unit of the logs' temperatures where they do not say it.")
+@click.option("--into", type=click.Path(path_type=Path), help="Folder to write; by default runs/CASE-fit.")
+@click.option("--json", "as_json", is_flag=True, help="Print it as JSON; text goes to standard error.")
+def fit(
+    case: Path,
+    overrides: tuple[str, ...],
+    logs: tuple[str, ...],
+    fitted: tuple[str, ...],
+    points: tuple[str, ...],
+    columns: tuple[str, ...],
+    pour: str | None,
+    unit: str | None,
+    into: Path | None,
+    as_json: bool,
+) -> None:
+    """Fit h, freezing point or conductivity of CASE to thermocouple logs, and write the fitted case."""
+    from rich.console import Console
+
+    from fem.answers import show_fit
+    from fem.case.read import load
+    from fem.result.folder import fresh
+    from fem.series.fit import fit as fit_case
+    from fem.terminal import show_json
+
+    if into is not None and into.exists():
+        raise CaseError(str(into), [Problem("--into", "exists; choose another folder")])
+    read = load(case, overrides)
+    with Console(stderr=True).status("") as status:
+        found = fit_case(
+            read,
+            logs,
+            fitted=fitted or ("h",),
+            points=points,
+            columns=columns,
+            pour=pour,
+            unit=unit,
+            progress=status.update,
+        )
+    written = found.write(into if into is not None else fresh(f"{case.stem}-fit"))
+    if as_json:
+        show_json(found.as_dict())
+    show_fit(found, written, to_stderr=as_json)
+
+
+@rimefront.command()
+@click.argument("folders", metavar="RUN RUN...", nargs=-1, required=True, type=click.Path(path_type=Path))
+@click.option("--into", type=click.Path(path_type=Path), help="Folder to write; by default runs/comparison.")
+@click.option("--json", "as_json", is_flag=True, help="Print the table as JSON; text goes to standard error.")
+def compare(folders: tuple[Path, ...], into: Path | None, as_json: bool) -> None:
+    """Put run folders side by side: what differs between their cases, and what came of it."""
+    from fem.answers import show_comparison
+    from fem.result.compare import compare as compare_runs
+    from fem.result.folder import fresh
+    from fem.terminal import show_json
+
+    found = compare_runs(folders)
+    written = found.write(into if into is not None else fresh("comparison"))
+    if as_json:
+        show_json(found.as_dict())
+    show_comparison(found, written, to_stderr=as_json)
+
+
+@rimefront.command()
 @click.option("--json", "as_json", is_flag=True, help="Print the lines as JSON.")
 def verify(as_json: bool) -> None:
     """Run the solver against exact solutions and print what each says, what ours is, and the error."""

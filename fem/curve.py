@@ -16,6 +16,9 @@ from numpy.typing import ArrayLike, NDArray
 
 Array = NDArray[np.float64]
 
+JUMP = 0.2
+"""Heat released within this range can count as released at one temperature [K]."""
+
 
 class State(NamedTuple):
     """What the solver needs at an enthalpy; all of one shape.
@@ -69,6 +72,17 @@ class Curve:
     k: Array
     k_slope: Array
     theta: Array
+
+    def jumps(self, interval: int) -> bool:
+        """Whether an interval, counted from its upper row, gives up heat as if at one temperature.
+
+        It is at most `JUMP` wide and takes more heat than 20 K of its surroundings do.
+        """
+        first, last = self.T[interval - 1], self.T[interval]
+        if last - first > JUMP:
+            return False
+        around = min(float(self.capacity(first - JUMP)), float(self.capacity(last + JUMP)))
+        return bool(self.H[interval] - self.H[interval - 1] > 20.0 * around)
 
     @classmethod
     def from_enthalpy(cls, T: ArrayLike, H: ArrayLike, k: ArrayLike) -> Curve:

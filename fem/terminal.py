@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import time as clock
 from collections.abc import Iterable
 from types import TracebackType
 from typing import TYPE_CHECKING, Any, Self
@@ -16,7 +17,12 @@ from fem.result.folder import Result
 
 if TYPE_CHECKING:
     from fem.march.step import Moment
+    from fem.series.sweep import Progress as SweepStands
+    from fem.series.sweep import Sweep
     from fem.watch.record import Record
+
+
+MOST_FAILURES = 12
 
 
 class Progress:
@@ -65,6 +71,84 @@ class Progress:
         ice = product.mean_ice(product.ice(record.body.temperature(moment.u)))
         said = "" if ice != ice else f"ice {100 * ice:3.0f} %"
         self._bar.update(self._task, completed=time, clock=duration(time), ice=said)
+
+
+class SweepProgress:
+    """A table of the latest runs of a sweep with the time left; silent where nobody watches."""
+
+    LATEST = 8
+
+    def __init__(self) -> None:
+        from rich.live import Live
+
+        console = Console(stderr=True)
+        self._watched = console.is_terminal
+        self._live = Live(console=console, transient=True, refresh_per_second=4)
+        self._rows: list[dict[str, Any]] = []
+        self._began: float | None = None
+
+    def __enter__(self) -> Self:
+        """Open the table."""
+        if self._watched:
+            self._live.start()
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        """Clear the table."""
+        self._live.stop()
+
+    def __call__(self, seen: SweepStands) -> None:
+        """Take note of a run."""
+        if not self._watched:
+            return
+        self._began = self._began or clock.monotonic()
+        if seen.row is not None:
+            self._rows = [*self._rows[1 - self.LATEST :], seen.row]
+        self._live.update(self._drawn(seen))
+
+    def _drawn(self, seen: SweepStands) -> Table:
+        """Return the table: how far it is, and the latest runs."""
+        assert self._began is not None
+        left = ""
+        if seen.computed:
+            each = (clock.monotonic() - self._began) / seen.computed
+            left = f", {duration(each * (seen.of - seen.done))} left"
+        failed = f", {seen.failed} failed" if seen.failed else ""
+        title = f"{seen.done} of {seen.of} runs{failed}{left}"
+        heads = [head for head in (self._rows[-1] if self._rows else {}) if head not in ("folder", "reason")]
+        table = Table(*heads, title=title, title_justify="left", box=None, pad_edge=False)
+        for row in self._rows:
+            table.add_row(*(_cell(row[head]) for head in heads))
+        return table
+
+
+def show_sweep(swept: Sweep, to_stderr: bool = False) -> None:
+    """Print the answer of a sweep, which runs failed and why, and where everything stands."""
+    console = Console(stderr=to_stderr, highlight=False, markup=False)
+    console.print(swept.summary["answer"], style="bold", soft_wrap=True)
+    console.print()
+    found = swept.summary["runs"] - swept.summary["computed"] - len(swept.failed)
+    table = Table.grid(padding=(0, 2))
+    table.add_column(style="cyan", no_wrap=True)
+    table.add_column(overflow="fold")
+    table.add_row("runs", f"{swept.summary['runs']}, of which {max(found, 0)} stood there already")
+    table.add_row("table", str(swept.folder / swept.summary["table"]))
+    table.add_row("page", str(swept.folder / "report.html"))
+    if (picture := swept.folder / "window.png").exists():
+        table.add_row("picture", str(picture))
+    for row in swept.failed[:MOST_FAILURES]:
+        table.add_row(f"run {row['run']} failed", row["reason"], style="yellow")
+    if len(swept.failed) > MOST_FAILURES:
+        table.add_row("", f"and {len(swept.failed) - MOST_FAILURES} more, in the table", style="yellow")
+    console.print(table)
+
+
+def _cell(value: Any) -> str:
+    if isinstance(value, bool):
+        return "yes" if value else "no"
+    return "" if value is None else f"{value:.5g}" if isinstance(value, float) else str(value)
 
 
 def show_json(summary: dict[str, Any]) -> None:

@@ -12,8 +12,9 @@ from scipy.spatial import cKDTree
 
 from fem.curve import Array, State
 from fem.heat import forms
-from fem.heat.linear import Factor, Pattern, factor_for
+from fem.heat.linear import Factor, factor_for
 from fem.heat.part import Part, place
+from fem.heat.pattern import Pattern
 from fem.material import Material
 from fem.mesh.domain import Domain
 

@@ -13,8 +13,9 @@ from typing import Any, Protocol
 import numpy as np
 import scipy.sparse as sp
 from scipy.linalg import lapack
-from scipy.sparse.csgraph import breadth_first_order, reverse_cuthill_mckee
+from scipy.sparse.linalg import LinearOperator
 
+from fem.heat.pattern import Pattern, narrow_order, width
 from fem.mesh.domain import Array
 
 # Times of one factorisation and solution in ms, bars with a wall and rods, one thread:
@@ -33,49 +34,6 @@ MOST_FOR_FACTORS = 50_000
 RESIDUAL, MOST_ITERATIONS = 1e-8, 100
 # A new hierarchy costs about as much as this many iterations.
 PRICE_OF_HIERARCHY = 8
-
-
-class Pattern:
-    """The places of a symmetric sparse matrix, built once from every entry that may ever be.
-
-    Parameters
-    ----------
-    rows, columns
-        Entries, repeated ones added up, shape (entries,).
-    size
-        Number of unknowns.
-
-    """
-
-    def __init__(self, rows: np.ndarray, columns: np.ndarray, size: int):
-        diagonal = np.arange(size, dtype=np.int32)
-        rows, columns = np.concatenate([rows, diagonal]), np.concatenate([columns, diagonal])
-        # Bytes that only say that there is an entry: their sum is never looked at.
-        places = sp.csr_matrix((np.ones(len(rows), dtype=np.int8), (rows, columns)), shape=(size, size))
-        self.size = size
-        self.indptr, self.columns = places.indptr, places.indices
-        self.rows = _rows(places)
-        self.diagonal = np.flatnonzero(self.rows == self.columns)
-
-    def gather(self, rows: np.ndarray, columns: np.ndarray, values: Array) -> Array:
-        """Return the values of coordinate entries laid out along the pattern, shape (nnz,)."""
-        summed = sp.csr_matrix((values, (rows, columns)), shape=(self.size, self.size))
-        if summed.nnz == len(self.rows):
-            return np.asarray(summed.data)
-        size = np.int64(self.size)
-        place = np.searchsorted(self.rows * size + self.columns, _rows(summed) * size + summed.indices)
-        data = np.zeros(len(self.rows))
-        data[place] = summed.data
-        return data
-
-    def matrix(self, data: Array) -> sp.csr_matrix:
-        """Return a CSR matrix that shares `data`, exact zeros and all."""
-        return sp.csr_matrix((data, self.columns, self.indptr), shape=(self.size, self.size))
-
-
-def _rows(matrix: sp.csr_matrix) -> np.ndarray:
-    """Row of each entry, shape (nnz,)."""
-    return np.repeat(np.arange(matrix.shape[0], dtype=np.int32), np.diff(matrix.indptr))
 
 
 class Factor(Protocol):
@@ -213,7 +171,7 @@ class Multigrid:
                 np.ascontiguousarray(rhs),
                 tol=RESIDUAL,
                 maxiter=MOST_ITERATIONS,
-                M=self._levels.aspreconditioner(cycle="V"),
+                M=LinearOperator((rhs.size, rhs.size), matvec=self._cycle, dtype=float),
                 residuals=residuals,
             )
         _refuse_unless(info == 0 and bool(np.all(np.isfinite(x))))
@@ -222,11 +180,31 @@ class Multigrid:
         self._excess += max(iterations - self._fresh, 0)
         return np.asarray(x)
 
+    def _cycle(self, rhs: Array, depth: int = 0) -> Array:
+        """Return what one V cycle makes of a residual.
+
+        pyamg's own takes the norm of the residual before and after, two more products with the
+        matrix where one is needed.
+        """
+        level = self._levels.levels[depth]
+        if depth + 1 == len(self._levels.levels):
+            return np.asarray(self._levels.coarse_solver(level.A, rhs))
+        x = np.zeros_like(rhs)
+        level.presmoother(level.A, x, rhs)
+        x += level.P @ self._cycle(level.R @ (rhs - level.A @ x), depth + 1)
+        level.postsmoother(level.A, x, rhs)
+        return x
+
     def _renew(self) -> None:
         from pyamg import ruge_stuben_solver
 
         # Aggregation sets up no faster here and takes a third more iterations.
-        self._levels = ruge_stuben_solver(self._matrix)
+        self._levels = ruge_stuben_solver(
+            self._matrix,
+            presmoother=("gauss_seidel", {"sweep": "forward"}),
+            # Backwards after forwards: as a whole symmetric, as conjugate gradients need it.
+            postsmoother=("gauss_seidel", {"sweep": "backward"}),
+        )
         self._fresh = self._excess = 0
 
 
@@ -240,51 +218,4 @@ def factor_for(pattern: Pattern) -> Factor:
     if pattern.size > MOST_FOR_FACTORS:
         return Multigrid(pattern)
     order = narrow_order(pattern)
-    return BandedCholesky(pattern, order) if _width(pattern, order) <= WIDEST_BAND else SparseLDL(pattern)
-
-
-def narrow_order(pattern: Pattern) -> np.ndarray:
-    """Return the unknowns in an order of small bandwidth.
-
-    Breadth first from a whole row of nodes at the far end. From a single node, as Cuthill and
-    McKee start, the fronts of a mesh of quadrilaterals fold round a corner and are twice as wide.
-    """
-    best = np.asarray(reverse_cuthill_mckee(pattern.matrix(np.ones(len(pattern.rows))), symmetric_mode=True))
-    order, start = best, np.array([0])
-    for _ in range(3):
-        order, last = _layers(pattern, order, start)
-        if len(order) < pattern.size:
-            # A body in several pieces: the walk saw only one.
-            return best
-        if _width(pattern, order) < _width(pattern, best):
-            best = order
-        start = np.arange(pattern.size - last, pattern.size)
-    return best
-
-
-def _layers(pattern: Pattern, order: np.ndarray, start: np.ndarray) -> tuple[np.ndarray, int]:
-    """Walk breadth first from the unknowns at places `start` of `order`, ties kept in that order.
-
-    Returns the new order and how many unknowns its last layer has.
-    """
-    size = pattern.size
-    place = np.empty_like(order)
-    place[order] = np.arange(size)
-    # One node more, joined to all that the walk starts from.
-    rows = np.concatenate([place[pattern.rows], np.full(len(start), size)])
-    columns = np.concatenate([place[pattern.columns], start])
-    graph = sp.csr_matrix((np.ones(len(rows)), (rows, columns)), shape=(size + 1, size + 1))
-    walk, parent = breadth_first_order(graph, size)
-    when = np.empty(size + 1, dtype=np.int64)
-    when[walk] = np.arange(len(walk))
-    parents = when[parent[walk[1:]]]
-    begin, end = 0, 1
-    while end < len(walk):
-        begin, end = end, 1 + int(np.searchsorted(parents, end))
-    return order[walk[1:]], end - begin
-
-
-def _width(pattern: Pattern, order: np.ndarray) -> int:
-    place = np.empty_like(order)
-    place[order] = np.arange(pattern.size)
-    return int(np.max(np.abs(place[pattern.rows] - place[pattern.columns])))
+    return BandedCholesky(pattern, order) if width(pattern, order) <= WIDEST_BAND else SparseLDL(pattern)

@@ -11,6 +11,10 @@ from fem.curve import Array, State
 from fem.heat.body import Body
 from fem.heat.exchange import Exchange, Fixed
 
+# Without it a front of water takes half the factorisations; none at all, and the time at which
+# its last drop freezes is 0.2 % off.
+AT_A_JUMP = 0.1
+
 
 @dataclass(frozen=True, eq=False)
 class Look:
@@ -88,6 +92,7 @@ class HeatProblem:
         self._open = (~held[pattern.rows] & ~held[pattern.columns]).astype(float) if held.any() else None
         self._reach = self._stored_span(span)
         self._kelvins = max(span[1] - span[0], 1e-3)
+        self._jump = self._jumps()
 
     def _stored_span(self, span: tuple[float, float]) -> Array:
         """Heat that each node gives up over the span of temperatures [J]."""
@@ -97,6 +102,20 @@ class HeatProblem:
             H = part.curve.enthalpy(np.array([low, high]))
             reach[part.nodes] += part.volume * (H[1] - H[0])
         return reach
+
+    def _jumps(self) -> tuple[Array, Array]:
+        """Enthalpies between which each node's host gives up heat at one temperature [J/m3].
+
+        The first above the second where there is no such heat.
+        """
+        low, high = np.full(self.body.size, np.inf), np.full(self.body.size, -np.inf)
+        for part in self.body.parts:
+            curve = part.curve
+            found = [i for i in range(1, len(curve.T)) if curve.jumps(i)]
+            if found:
+                most = max(found, key=lambda i: float(curve.H[i] - curve.H[i - 1]))
+                low[part.hosted], high[part.hosted] = curve.H[most - 1], curve.H[most]
+        return low, high
 
     # What the march asks for.
 
@@ -223,15 +242,21 @@ class HeatProblem:
         """Return the root mean square of an error as temperature, as a share of the run's span.
 
         Nodes whose capacity changes by half or more in the step cross latent heat: there the
-        energy says how good the step is, and a temperature says nothing.
+        energy says how good the step is, and a temperature says nothing. Where latent heat
+        leaves at one temperature it says little anywhere: node after node is held at that
+        temperature and let go, and all behind the front go down in stairs, which are the mesh's
+        and not the step's. It then counts `AT_A_JUMP` of itself.
         """
+        low, high = self._jump
+        on_the_way = (np.minimum(before.u, after.u) < high) & (np.maximum(before.u, after.u) > low)
+        weight = AT_A_JUMP if np.any(on_the_way & self.free) else 1.0
         ratio = after.state.capacity / before.state.capacity
         smooth = self.free & (ratio > 0.67) & (ratio < 1.5)
         if not smooth.any():
             return 0.0
         T = energy[smooth] / (after.slope[smooth] * self._kelvins)
-        weight = self._reach[smooth]
-        return float(np.sqrt((weight @ (T * T)) / self._reach.sum()))
+        reach = self._reach[smooth]
+        return weight * float(np.sqrt((reach @ (T * T)) / self._reach.sum()))
 
     def held_heat(self, stored: Array) -> Array:
         """Return the heat held by the nodes of each fixed surface [J], 0 for other surfaces."""

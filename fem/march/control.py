@@ -42,8 +42,8 @@ class Control:
     accept: float = 1.5
     growth: float = 2.0
     first_move: float = 0.05
-    stop_mean: float = 0.1
-    stop_worst: float = 0.3
+    stop_mean: float = 0.2
+    stop_worst: float = 1.0
     first_step: float | None = None
     largest_step: float | None = None
     most_tries: int = 40
@@ -51,9 +51,9 @@ class Control:
 
 
 ACCURACIES = {
-    "quick": Control(tolerance=1e-2),
-    "standard": Control(tolerance=3e-3),
-    "tight": Control(tolerance=3e-4),
+    "quick": Control(tolerance=7e-3),
+    "standard": Control(tolerance=2e-3),
+    "tight": Control(tolerance=2e-4),
 }
 
 

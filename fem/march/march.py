@@ -15,7 +15,7 @@ import numpy as np
 from fem.errors import RunFailure
 from fem.march.control import Control
 from fem.march.newton import Effort, solve
-from fem.march.problem import Problem
+from fem.march.problem import Array, Problem
 from fem.march.step import Moment, Step, begin, recurrence
 
 SMALLEST = 1e-9
@@ -73,7 +73,7 @@ def march(
                 yield step.cut(problem, stopped)
                 return
             yield step
-            history = [*history[-1:], step.after]
+            history = [*(moment.aged() for moment in history[-2:]), step.after]
 
 
 def first_step(problem: Problem, start: Moment, control: Control) -> float:
@@ -135,18 +135,11 @@ def _attempt(
     earlier = now.time - history[-2].time if len(history) > 1 else None
     new, old, g = recurrence(size, earlier)
     known, known_carried = new * now.stored, new * now.carried
-    guess = now.u + size * now.u_rate
-    share = 0.5
     if earlier is not None:
-        before, r = history[-2], size / earlier
-        known = known - old * before.stored
-        known_carried = known_carried - old * before.carried
-        guess = guess + (size / earlier) ** 2 * (before.u - now.u + earlier * now.u_rate)
-        # Errors of the corrector and of the parabola through value, slope and last value, both
-        # in units of the third derivative.
-        corrector, predictor = (1 + r) ** 2 / (r * (1 + 2 * r)), (1 + r) / r
-        share = corrector / (corrector + predictor)
-    found = solve(problem, time, problem.impose(time, guess), known, g, control, effort)
+        known = known - old * history[-2].stored
+        known_carried = known_carried - old * history[-2].carried
+    start, guess, share = _forecast(history, time)
+    found = solve(problem, time, problem.impose(time, start), known, g, control, effort)
     if found is None:
         return None
     look, stored = found
@@ -157,6 +150,38 @@ def _attempt(
     gap = share * (u - guess) * look.stored_slope
     error = max(problem.mean_size(gap), problem.smooth_size(gap, now.look, look))
     return Step(now, after, earlier), error
+
+
+def _forecast(history: list[Moment], time: float) -> tuple[Array, Array, float]:
+    """Return where the iteration of a step starts, from what its error is told, and its share of that.
+
+    Both from past values, not from slopes: as a front crosses cells, the slopes at one moment go
+    up and down in stairs. The iteration starts on the parabola through the last three, but
+    nowhere further from the line through the last two than half of its rise: beyond, the
+    parabola throws nodes across latent heat, and each costs an iteration to bring back.
+    """
+    now = history[-1]
+    size = time - now.time
+    if len(history) == 1:
+        guess = now.u + size * now.u_rate
+        return guess, guess, 0.5
+    before = history[-2]
+    earlier = now.time - before.time
+    r = size / earlier
+    slope = (now.u - before.u) / earlier
+    line = now.u + size * slope
+    # Errors of the scheme and of the parabola, both in units of the third derivative.
+    corrector = (1 + r) ** 2 / (r * (1 + 2 * r))
+    if len(history) == 2:
+        guess = line + size * (size + earlier) * (now.u_rate - slope) / earlier
+        predictor = (1 + r) / r
+    else:
+        first = history[-3]
+        bend = (slope - (before.u - first.u) / (before.time - first.time)) / (now.time - first.time)
+        guess = line + size * (size + earlier) * bend
+        predictor = (1 + r) / r * (time - first.time) / size
+    most = 0.5 * np.abs(line - now.u)
+    return line + np.clip(guess - line, -most, most), guess, corrector / (corrector + predictor)
 
 
 __all__ = ["Effort", "Moment", "Step", "begin", "march"]

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -41,6 +41,10 @@ class Moment:
     passed: Array
     u_rate: Array
     look: Any
+
+    def aged(self) -> Moment:
+        """Return the moment as later steps need it, without its look, which is large."""
+        return replace(self, look=None)
 
 
 @dataclass(frozen=True, eq=False)
@@ -86,6 +90,16 @@ class Step:
             _hermite(s, self.size, a.u, b.u, a.u_rate, b.u_rate),
             _hermite(s, self.size, a.carried, b.carried, a.passed, b.passed),
         )
+
+    def chord(self, time: float) -> Array:
+        """Return the unknowns on a straight line between the ends, at a time inside the step [s].
+
+        Where latent heat leaves at one temperature, nodes give theirs up one after another: a
+        slope at one moment says nothing of the step, and a cubic through it misses the front by
+        ten times as much as a straight line.
+        """
+        s = (time - self.before.time) / self.size
+        return np.asarray(self.before.u + s * (self.after.u - self.before.u))
 
     def cut(self, problem: Problem, time: float) -> Step:
         """Return the step ended at a time inside it [s].

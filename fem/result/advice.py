@@ -206,7 +206,7 @@ def _thin(summary: dict[str, Any]) -> str:
         return ""
     margin = 100.0 * (aim["within_s"] - aim["time_s"]) / aim["within_s"]
     if (spread := time_range(summary)) is not None:
-        if not spread[0] <= aim["within_s"] < spread[1]:
+        if margin < 0.0 or aim["within_s"] >= spread[1]:
             return ""
         late = duration(spread[1] - aim["within_s"])
         return f"Margin of {margin:.0f} %: the late end of the likely range misses the time given by {late}."

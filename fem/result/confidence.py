@@ -60,7 +60,8 @@ def doubt(summary: Mapping[str, Any]) -> str:
         return f"even its late end keeps {given}"
     if found[0] > within:
         return f"even its early end is past {given}"
-    return f"{given} lie inside it: its late end misses them by {duration(found[1] - within)}"
+    late = duration(found[1] - within)
+    return f"{given} lie inside it: kept at its early end, missed by {late} at its late end"
 
 
 def ratio_of(summary: Mapping[str, Any], estimate: Mapping[str, Any]) -> float | None:

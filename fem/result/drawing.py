@@ -90,8 +90,8 @@ def svg_text(figure: Figure) -> str:
     return out.getvalue()
 
 
-def label_of(name: str) -> str:
-    """Return a user's name as a label, shortened where it is long."""
+def label_of(name: str, longest: int = 32) -> str:
+    """Return a user's name as a label, shortened where it is longer than so many letters."""
     # matplotlib leaves labels out of the legend that begin with an underscore.
-    short = name if len(name) <= 32 else name[:31] + "…"
+    short = name if len(name) <= longest else name[: longest - 1] + "…"
     return "\u200a" + short if short.startswith("_") else short

@@ -17,6 +17,7 @@ from numpy.typing import NDArray
 from fem.result.folder import Array
 from fem.result.hdf import HDF, read_last
 
+# Spelt here once more: the module that writes it brings the whole solver along.
 PVD = "fields.pvd"
 CORNERS = ("triangle", "quad")
 

@@ -17,13 +17,15 @@ _SPAN = re.compile(r"(?<=\d)-(?=[\d.]+ (?:s|min|h)\b)")
 _UNIT = re.compile(r"(?<=\d) (?=(?:°C|%|mm|min|kJ|kW|W|K|J|g|h|s)\b|%)")
 
 
-def render(content: dict[str, Any]) -> str:
+def render(content: dict[str, Any], template: str = "report.html.j2") -> str:
     """Return the page.
 
     Parameters
     ----------
     content
-        What ``report.html.j2`` names.
+        What the template names.
+    template
+        Its file, beside this module.
 
     """
     from jinja2 import Environment, FileSystemLoader, StrictUndefined
@@ -44,7 +46,7 @@ def render(content: dict[str, Any]) -> str:
         "image": image,
     }
     style = Markup((_HERE / "report.css").read_text(encoding="utf-8"))
-    return environment.get_template("report.html.j2").render(style=style, **content)
+    return environment.get_template(template).render(style=style, **content)
 
 
 def typeset(text: str) -> str:

@@ -78,11 +78,11 @@ def effects(summary: Mapping[str, Any]) -> str:
     sizes = [abs(v) for e in inputs for v in _both(e)]
     most = max(sizes, default=0.0)
     scale, unit = (1.0, "s") if most < 600.0 else _unit(most)
-    labels = [f"{label_of(n)} ± {e['half_width']}" for n, e in zip(names, inputs, strict=False)]
+    labels = [f"{label_of(n)} ± {label_of(e['half_width'], 16)}" for n, e in zip(names, inputs, strict=False)]
     with drawing() as figure_of:
         figure = figure_of((WIDTH, height(summary)))
         ax = figure.add_subplot()
-        _rows(ax, labels, [e["words"] for e in inputs])
+        _rows(ax, labels, [label_of(e["words"], 56) for e in inputs])
         for colour, word, which in ((LESS, "lower", 0), (MORE, "higher", 1)):
             lengths = [_both(e)[which] / scale for e in inputs]
             ax.barh(range(len(inputs)), lengths, height=0.5, color=colour, label=word, zorder=2)

@@ -21,7 +21,7 @@ from fem.result.page import render, typeset
 
 REPORT = "report.html"
 # So long a case text is left to the screen and to case.toml: on paper it would take a third page.
-LONGEST_PRINTED = 72
+LONGEST_PRINTED, LETTERS_A_LINE = 72, 52
 
 Limits = Mapping[str, tuple[float, float]]
 
@@ -68,7 +68,7 @@ def _content(run: Contents, limits: Limits) -> dict[str, Any]:
     left_out += [f"{'Curves' if what == 'curves' else 'Case'}: {why}." for what, why in run.missing.items()]
     seen = _lowest(frame)
     aim = summary["aim"]
-    lines = run.case_text.count("\n") + 1
+    lines = run.case_text.splitlines()
     return {
         "title": summary["title"].strip() or "A run",
         "summary": summary,
@@ -91,8 +91,8 @@ def _content(run: Contents, limits: Limits) -> dict[str, Any]:
         "checks": advice.checks(run),
         "further": numbers.further(summary),
         "case_text": run.case_text,
-        "case_long": lines > LONGEST_PRINTED or max(map(len, run.case_text.splitlines()), default=0) > 120,
-        "case_lines": lines,
+        "case_long": sum(1 + len(line) // LETTERS_A_LINE for line in lines) > LONGEST_PRINTED,
+        "case_lines": len(lines),
         "aim_text": numbers.aim_text(aim) if aim is not None else "",
     }
 
@@ -110,7 +110,7 @@ def _confidence(summary: dict[str, Any], left_out: list[str]) -> list[dict[str, 
         parts.append("diamonds: estimates, with the band that theory allows; hollow: outside their range")
         figures.append(
             {
-                "title": "The time, beside what it can be held against",
+                "title": "The time and its estimates",
                 "svg": range_pictures.times(summary),
                 "alt": f"Time to the aim, its range and its estimates. {sentence(summary)}",
                 "caption": "; ".join(parts) + ".",

@@ -93,10 +93,10 @@ def _groups(plan: Variations, found: list[Note]) -> list[tuple[str, ...]]:
         found += [
             Note(place, f'"{name}" stands in two groups') for name in dict.fromkeys(group) if name in grouped
         ]
-        if len(lengths := {n: _length(plan, (n,)) for n in group if n not in wrong}) and not wrong:
-            if len(set(lengths.values())) > 1:
-                said = ", ".join(f"{name} has {count}" for name, count in lengths.items())
-                found.append(Note(place, f"lists walked side by side are of one length: {said}"))
+        lengths = {name: _length(plan, (name,)) for name in group if name not in wrong}
+        if not wrong and len(set(lengths.values())) > 1:
+            said = ", ".join(f"{name} has {count}" for name, count in lengths.items())
+            found.append(Note(place, f"lists walked side by side are of one length: {said}"))
         grouped |= dict.fromkeys((n for n in group if n not in wrong), tuple(dict.fromkeys(group)))
     return list(dict.fromkeys(grouped.get(name, (name,)) for name in plan.vary))
 
@@ -150,9 +150,7 @@ def _draw(drawn: Mapping[str, Variation], sample: Sample) -> Axis:
 
 def _between(variation: Variation, shares: np.ndarray) -> list[Any]:
     """Return the values at shares of a range, written in its own unit to six figures."""
-    ends = number_and_unit(variation.from_), number_and_unit(variation.to)
-    assert ends[0] is not None
-    assert ends[1] is not None
+    ends = [end for end in map(number_and_unit, (variation.from_, variation.to)) if end is not None]
     (low, unit), (high, _) = ends
     if variation.spacing == "log":
         numbers = np.exp(np.log(low) + shares * (np.log(high) - np.log(low)))

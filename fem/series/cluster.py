@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import itertools
+import re
+import socket
 from collections.abc import Callable, Iterator
 from typing import Any, Generic, TypeVar
 
@@ -11,6 +13,7 @@ from fem.errors import CaseError, Problem
 T = TypeVar("T")
 R = TypeVar("R")
 CONNECT_S = 20.0
+_ADDRESS = re.compile(r"(?:tcp|tls)://(\[[\da-fA-F:]+\]|[^\s/:]+):(\d+)")
 # So many tasks wait with the scheduler for each thread of its workers.
 QUEUED = 3
 
@@ -25,10 +28,24 @@ class Cluster(Generic[T, R]):
     address
         Of the scheduler, such as "tcp://10.0.0.5:8786".
 
+    Raises
+    ------
+    CaseError
+        Where nothing listens at the address.
+
     """
 
     def __init__(self, work: Callable[[T], R], address: str):
         self._work, self._address = work, address
+        match = _ADDRESS.fullmatch(address)
+        if match is None:
+            told = f"is written tcp://HOST:PORT, such as tcp://127.0.0.1:8786, got {address}"
+            raise CaseError("sweep", [Problem("--cluster", told)])
+        # A client takes its time to give up, and then complains of itself.
+        try:
+            socket.create_connection((match[1].strip("[]"), int(match[2])), CONNECT_S).close()
+        except (OSError, OverflowError) as error:
+            raise CaseError("sweep", [Problem("--cluster", self._silent(error))]) from error
 
     def run(self, tasks: Iterator[T]) -> Iterator[tuple[T, R | str]]:
         """Do tasks; yield each with its result, or with the reason for having none.
@@ -46,7 +63,7 @@ class Cluster(Generic[T, R]):
             from distributed import as_completed
 
             going: dict[Any, T] = {}
-            arriving = as_completed()
+            arriving = as_completed(loop=client.loop)
 
             def submit(more: Iterator[T]) -> None:
                 for task in more:
@@ -74,8 +91,10 @@ class Cluster(Generic[T, R]):
         try:
             return Client(self._address, timeout=CONNECT_S, set_as_default=False)
         except (OSError, ValueError, TimeoutError) as error:
-            told = f"no scheduler answers at {self._address}: {error}"
-            raise CaseError("sweep", [Problem("--cluster", told)]) from error
+            raise CaseError("sweep", [Problem("--cluster", self._silent(error))]) from error
+
+    def _silent(self, error: Exception) -> str:
+        return f"no scheduler answers at {self._address}: {error}"
 
     @staticmethod
     def _room(client: Any) -> int:

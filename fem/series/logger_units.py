@@ -94,8 +94,9 @@ def to_celsius(values: Array, unit: str | None, bounds: tuple[float, float] | No
         if coldest - 5.0 <= low < freezing_point and freezing_point < high < 60.0:
             return np.asarray(convert(values, reading, TEMPERATURE)), reading  # type: ignore[arg-type]
     raise ValueError(
-        f"goes from {known.min():.4g} to {known.max():.4g} and does not say its unit: in no unit of temperature "
-        f"does that pass the freezing point ({freezing_point:.3g} degC) above the coolant ({coldest:.3g} degC); "
+        f"goes from {known.min():.4g} to {known.max():.4g} and does not say its unit: in no unit of "
+        f"temperature does that pass the freezing point ({freezing_point:.3g} degC) above the coolant "
+        f"({coldest:.3g} degC); "
         "add --unit, or see whether it is the right log"
     )
 

@@ -47,7 +47,7 @@ class Passages:
     slopes
         Derivative of each time per half-width of each input [s], shape (k, m).
     paces
-        How fast the temperature fell then [K/s], shape (k,).
+        How fast the temperature fell then [K/s], shape (k,); NaN after a bare march.
 
     """
 
@@ -66,7 +66,7 @@ def passages(plan: Plan, levels: Sequence[Level], inputs: Sequence[Input]) -> Pa
     levels
         What is to be passed.
     inputs
-        To which the times are differentiated, one at least.
+        To which the times are differentiated; none for a bare march.
 
     Raises
     ------
@@ -77,7 +77,7 @@ def passages(plan: Plan, levels: Sequence[Level], inputs: Sequence[Input]) -> Pa
 
     """
     gauge = Gauge(plan.body, plan.case.watch.points, plan.cooling)
-    carried = Sensitivity(plan, gauge, inputs)
+    carried = Sensitivity(plan, gauge, inputs) if inputs else None
     crossings = _Crossings(levels, gauge, carried, len(inputs))
     time, u = 0.0, plan.start
     try:
@@ -88,15 +88,18 @@ def passages(plan: Plan, levels: Sequence[Level], inputs: Sequence[Input]) -> Pa
                 if ending.met:
                     continue
                 moment = begin(problem, time, u, plan.no_accounts(stage))
-                carried.begin_stage(stage, problem, moment)
+                if carried is not None:
+                    carried.begin_stage(stage, problem, moment)
                 landings, control = plan.landings(stage, time), plan.control(stage)
                 for step in march(problem, moment, ending.latest, landings, control, Effort(), ending.stop):
-                    carried.advance(step)
+                    if carried is not None:
+                        carried.advance(step)
                     crossings.see(step)
                     if crossings.complete:
                         return crossings.found()
                 time, u = step.after.time, step.after.u
-                carried.end_stage(stage, step, ending.met)
+                if carried is not None:
+                    carried.end_stage(stage, step, ending.met)
     except RunFailure as failure:
         failure.where = failure.where or plan.place_of(failure.unknown)
         raise
@@ -106,7 +109,7 @@ def passages(plan: Plan, levels: Sequence[Level], inputs: Sequence[Input]) -> Pa
 class _Crossings:
     """Finds in each step which levels are passed in it."""
 
-    def __init__(self, levels: Sequence[Level], gauge: Gauge, carried: Sensitivity, inputs: int):
+    def __init__(self, levels: Sequence[Level], gauge: Gauge, carried: Sensitivity | None, inputs: int):
         self._levels, self._gauge, self._carried = levels, gauge, carried
         self._times = np.full(len(levels), np.nan)
         self._slopes = np.full((len(levels), inputs), np.nan)
@@ -124,12 +127,14 @@ class _Crossings:
         for i, level in enumerate(self._levels):
             if np.isfinite(self._times[i]) or now[level.at] > level.temperature:
                 continue
-            at = level.at
-            arrival = Arrival(lambda u, at=at: self._gauge.measure(u, at), level.temperature, below=True)
-            time = arrival.within(step)
+            time = self._arrival(level).within(step)
             assert time is not None, "the temperature at the end of the step is below the level"
             self._times[i] = time
-            self._slopes[i], self._paces[i] = self._carried.crossing(step, time, at)
+            if self._carried is not None:
+                self._slopes[i], self._paces[i] = self._carried.crossing(step, time, level.at)
+
+    def _arrival(self, level: Level) -> Arrival:
+        return Arrival(lambda u: self._gauge.measure(u, level.at), level.temperature, below=True)
 
     def found(self) -> Passages:
         """Return what was found."""

@@ -113,7 +113,9 @@ def _read(path: Path, column: str | None, unit: str | None, bounds: tuple[float,
     if dropped := int(np.sum(~good)):
         remarks.append(f"{dropped} of {len(good)} rows of {path.name} have no reading and are left out")
     if good.sum() < FEWEST:
-        raise ValueError(f"holds {good.sum()} rows with a time and a temperature; {FEWEST} at least are needed")
+        raise ValueError(
+            f"holds {good.sum()} rows with a time and a temperature; {FEWEST} at least are needed"
+        )
     times, temperatures = _rising(seconds[good], values[good])
     if len(times) < FEWEST:
         raise ValueError(f"holds only {len(times)} different times; {FEWEST} at least are needed")
@@ -156,7 +158,8 @@ def _table(lines: Sequence[str]) -> _Table:
         split = [_cells(line, separator) for line in lines]
         for decimal in (".", ","):
             if decimal != separator:
-                score = _sense(split, decimal)
+                # Blanks separate only where nothing else does: headings hold them too.
+                score = _sense(split, decimal) - 2.0 * (separator == " ")
                 if best is None or score > best[0]:
                     best = score, split, decimal
     assert best is not None
@@ -166,14 +169,16 @@ def _table(lines: Sequence[str]) -> _Table:
     width = _width(split, decimal)
     told = [len(row) == width and _told(row, decimal) >= 2 for row in split]
     first = told.index(True)
-    rows = [row for row, is_data in zip(split[first:], told[first:], strict=True) if is_data or len(row) == width]
+    rows = [
+        row for row, is_data in zip(split[first:], told[first:], strict=True) if is_data or len(row) == width
+    ]
     above = [row for row in split[:first] if len(row) > 1]
     headings = above[-1] if above else [""] * width
     if len(headings) != width:
         if _only_commas(lines[first]):
             raise ValueError(
-                f"heads {len(headings)} columns over rows of {width}: decimal commas between commas cannot be "
-                "told apart; export it with semicolons or decimal points"
+                f"heads {len(headings)} columns over rows of {width}: decimal commas between commas cannot "
+                "be told apart; export it with semicolons or decimal points"
             )
         headings = (headings + [""] * width)[:width]
     return _Table(headings, rows, decimal)
@@ -228,7 +233,9 @@ def _clock_column(table: _Table) -> int:
     """Return the column of the clock: times of the day, else what is headed so, else what rises."""
     width = len(table.headings)
     columns = [[row[i] for row in table.rows] for i in range(width)]
-    by_clock = [sum(bool(_CLOCK.fullmatch(c.strip().replace(",", "."))) for c in column) for column in columns]
+    by_clock = [
+        sum(bool(_CLOCK.fullmatch(c.strip().replace(",", "."))) for c in column) for column in columns
+    ]
     if max(by_clock) > 0.5 * len(table.rows):
         return int(np.argmax(by_clock))
     rising = [i for i in range(width) if _rises(columns[i], table.decimal)]
@@ -242,7 +249,11 @@ def _clock_column(table: _Table) -> int:
 
 def _rises(cells: Sequence[str], decimal: str) -> bool:
     numbers = [float(m[1]) for c in cells if (m := _NUMBER.fullmatch(_plain(c, decimal)))]
-    return len(numbers) > 0.5 * len(cells) and bool(np.mean(np.diff(numbers) >= 0) > 0.98) and numbers[-1] > numbers[0]
+    return (
+        len(numbers) > 0.5 * len(cells)
+        and bool(np.mean(np.diff(numbers) >= 0) > 0.98)
+        and numbers[-1] > numbers[0]
+    )
 
 
 def _probe_column(table: _Table, clock: int, column: str | None) -> int:
@@ -252,7 +263,8 @@ def _probe_column(table: _Table, clock: int, column: str | None) -> int:
         for i in range(len(table.headings))
         if i != clock
         and not _COUNTERS.fullmatch(table.headings[i])
-        and sum(bool(_NUMBER.fullmatch(_plain(r[i], table.decimal))) for r in table.rows) > 0.2 * len(table.rows)
+        and sum(bool(_NUMBER.fullmatch(_plain(r[i], table.decimal))) for r in table.rows)
+        > 0.2 * len(table.rows)
     ]
     names = {i: table.headings[i].strip() or f"column {i + 1}" for i in numeric}
     if column is not None:
@@ -260,11 +272,13 @@ def _probe_column(table: _Table, clock: int, column: str | None) -> int:
         for i in numeric:
             if column in (names[i], short[i], str(i + 1)):
                 return i
-        raise ValueError(unknown("column", column, names.values()))
+        raise ValueError(unknown("column", column, short.values()))
     if not numeric:
         raise ValueError("has a clock but no column of temperatures")
     if len(numeric) > 1:
-        raise ValueError(f"has several columns that may be the probe: {', '.join(names.values())}; add --column")
+        raise ValueError(
+            f"has several columns that may be the probe: {', '.join(names.values())}; add --column"
+        )
     return numeric[0]
 
 
@@ -272,6 +286,8 @@ def _rising(times: Array, values: Array) -> tuple[Array, Array]:
     """Average rows of the same time; refuse a clock that runs backwards."""
     back = np.flatnonzero(np.diff(times) < 0)
     if len(back):
-        raise ValueError(f"runs backwards: {len(back)} rows come before the row above them, such as row {back[0] + 2}")
+        raise ValueError(
+            f"runs backwards: {len(back)} rows come before the row above them, such as row {back[0] + 2}"
+        )
     unique, where, counts = np.unique(times, return_inverse=True, return_counts=True)
     return unique, np.bincount(where, weights=values) / counts

@@ -64,7 +64,8 @@ def _plain(value: Any) -> Any:
     if isinstance(value, np.ndarray):
         return [str(value.shape), hashlib.sha256(np.ascontiguousarray(value).tobytes()).hexdigest()]
     if isinstance(value, BaseModel):
-        return [type(value).__name__, _fields({name: getattr(value, name) for name in type(value).model_fields})]
+        fields = {name: getattr(value, name) for name in type(value).model_fields}
+        return [type(value).__name__, _fields(fields)]
     if dataclasses.is_dataclass(value):
         return _fields({f.name: getattr(value, f.name) for f in dataclasses.fields(value)})
     if hasattr(value, "_asdict"):

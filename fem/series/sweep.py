@@ -51,7 +51,7 @@ class Sweep:
     Parameters
     ----------
     summary
-        As in ``sweep.json``: title, answer, how many runs, which failed and why.
+        As in ``sweep.json``: title, outcome, answer, how many runs, which failed and why.
     rows
         As in ``table.csv``, in the order of the plan: header -> value, None where there is none.
     folder
@@ -114,10 +114,12 @@ def sweep(
     """
     read = plan if isinstance(plan, SweepPlan) else read_plan(plan)
     root = Path(into) if into is not None else Path("sweeps") / Path(read.source).stem
+    engine = _engine(processes, cluster)
     store = _open(root)
+    _write(root, {"title": read.title, "outcome": "running", "runs": read.runs, "program": program()})
     replace(root / PLAN, read.text)
     runner = _Runner(read, store, progress or (lambda seen: None), local=cluster is None)
-    runner.run(_engine(processes, cluster))
+    runner.run(engine)
     rows = runner.rows()
     summary = _summary(read, rows, runner)
     write_table(rows, root)
@@ -125,13 +127,17 @@ def sweep(
 
     # The page and its picture say the answer; what it takes from the rows it returns for sweep.json.
     summary["answer"] = write_page(read, rows, summary, root)
-    replace(root / SWEEP, json.dumps(summary, indent=2, ensure_ascii=False) + "\n")
+    _write(root, summary)
     return Sweep(summary, rows, root)
 
 
+def _write(root: Path, summary: dict[str, Any]) -> None:
+    replace(root / SWEEP, json.dumps(summary, indent=2, ensure_ascii=False) + "\n")
+
+
 def _open(root: Path) -> Store:
-    if root.exists() and (not root.is_dir() or (any(root.iterdir()) and not (root / PLAN).exists())):
-        told = f"exists and is no sweep's folder (it holds no {PLAN}); choose another"
+    if root.exists() and (not root.is_dir() or (any(root.iterdir()) and not (root / SWEEP).exists())):
+        told = f"exists and is no sweep's folder (it holds no {SWEEP}); choose another"
         raise CaseError(str(root), [Problem("--into", told)])
     store = Store(root)
     store.clear_parts()
@@ -217,6 +223,7 @@ def _summary(plan: SweepPlan, rows: list[Row], runner: _Runner) -> dict[str, Any
     failed = [{"run": row["run"], "reason": row["reason"]} for row in rows if row["outcome"] != "finished"]
     return {
         "title": plan.title,
+        "outcome": "part failed" if failed else "finished",
         "answer": "",
         "runs": len(rows),
         "computed": runner.computed,

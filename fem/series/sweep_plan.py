@@ -16,6 +16,7 @@ from fem.case.locate import KeyPath, dotted, line_of, lines, split
 from fem.case.read import load, loads, text_of, tree_of
 from fem.case.wording import Note, notes, one_line
 from fem.errors import CaseError, Problem, unknown
+from fem.plan import Plan as Prepared
 from fem.quantity import DURATION, SHARE, TEMPERATURE, Kind
 from fem.series.axes import Axis, Choice, Point, axes_of, overrides_of, points
 from fem.series.variations import RESULTS, TAKEN, Keep, Limit, Variation, Variations, number_and_unit
@@ -120,7 +121,8 @@ def read_plan(path: str | Path) -> SweepPlan:
         found += _tried(base, axes)
     if found:
         if broken is not None:
-            told = f"does not read either: {len(broken.problems)} problem(s), first: {broken.problems[0].message}"
+            first = broken.problems[0].message
+            told = f"does not read either: {len(broken.problems)} problem(s), first: {first}"
             found.append(Note(("case",), told))
         raise CaseError(source, _placed(found, tree, text))
     if broken is not None:
@@ -224,7 +226,10 @@ def _base(plan: Variations, folder: Path, found: list[Note]) -> tuple[Case | Non
     """Read the base with what every run sets; what [set] got wrong is the plan's mistake."""
     overrides = overrides_of(plan.set_) + ([] if plan.keep.fields else [NO_FIELDS])
     try:
-        return load(folder / plan.case, overrides), None
+        base = load(folder / plan.case, overrides)
+        # What only shows once the piece is meshed would show in every run.
+        Prepared.of(base).record()
+        return base, None
     except CaseError as error:
         mine = [(p, key) for p in error.problems for key in plan.set_ if _concerns(p, key)]
         found += [Note(("set", key), _bare(p)) for p, key in mine]

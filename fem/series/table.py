@@ -60,7 +60,8 @@ class Heads:
         row |= {self.results[name]: values[name] for name in list(RESULTS)[1:]}
         if self.plan.keep.ranges:
             spread = ((summary or {}).get("uncertainty") or {}).get("time_s") or {}
-            row |= {f"time_to_aim.{end} [s]": spread.get(end) if finished else None for end in ("low", "high")}
+            for end in ("low", "high"):
+                row[f"time_to_aim.{end} [s]"] = spread.get(end) if finished else None
         row["outcome"] = summary["outcome"] if summary is not None else "failed"
         return row | {"reason": why, "folder": folder}
 

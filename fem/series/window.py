@@ -1,15 +1,13 @@
-"""The operating window: which settings meet the aim, in one sentence and in the numbers behind it."""
+"""The operating window: which settings of a sweep meet what is asked."""
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any, Literal
 
 import numpy as np
 
 from fem.curve import Array
-from fem.result.answer import duration
 from fem.series.sweep_plan import SweepPlan
 from fem.series.table import Heads, Row, known
 from fem.series.variations import number_and_unit
@@ -97,23 +95,29 @@ def window_of(plan: SweepPlan, rows: list[Row]) -> Window:
     scattered = any(variation.sampled for variation in plan.vary.values())
     numeric = sorted((d for d in dims if not scattered), key=lambda d: not d.numeric)
     shape = [d.numeric for d in numeric]
-    if shape == [True, True]:
-        kind, x, y = "contour", dims[0], dims[1]
-    elif shape == [True] or (shape == [True, False] and len(numeric[1].values) <= MOST_CURVES):
-        kind, x, y = "curves", numeric[0], numeric[1] if len(numeric) > 1 else None
+    x, y = (*numeric, None, None)[:2]
+    if x is not None and shape == [True, True]:
+        kind: Literal["contour", "curves"] = "contour"
+    elif x is not None and (shape == [True] or (shape == [True, False] and _few(y))):
+        kind = "curves"
     else:
         return Window("ranking", None, None, result, line, below, np.empty((0, 0)))
     grid = np.full((len(y.values) if y else 1, len(x.values)), np.nan)
     for row in rows:
         if (value := row[heads.results[result]]) is not None:
             grid[y.values.index(row[y.head]) if y else 0, x.values.index(row[x.head])] = value
-    return Window(kind, x, y, result, line, below, grid)  # type: ignore[arg-type]
+    return Window(kind, x, y, result, line, below, grid)
+
+
+def _few(names: Dimension | None) -> bool:
+    return names is not None and len(names.values) <= MOST_CURVES
 
 
 def _line(plan: SweepPlan, result: str) -> tuple[float | None, bool]:
     """Return what has to be met, and whether below it."""
     aim = plan.base.aim
-    varies = any(key.startswith("aim") for axis in plan.axes for row in axis.rows for c in row for key in c.overrides)
+    settings = (choice for axis in plan.axes for row in axis.rows for choice in row)
+    varies = any(key.startswith("aim") for choice in settings for key in choice.overrides)
     least, most = plan.limits.get(result, (-np.inf, np.inf))
     if result == "time_to_aim":
         within = aim.within if aim is not None and aim.within is not None and not varies else np.inf
@@ -173,11 +177,11 @@ class Pass:
 
     def said(self, x: Dimension) -> str:
         """Return it in words."""
-        if self.side in ("all", "none"):
-            return f"{'every' if self.side == 'all' else 'no'} {x.name} tried"
+        tried = f"{x.name} from {x.said(x.values[0])} to {x.said(x.values[-1])}"
         if self.edge is None:
-            return f"some of the {x.name} tried, on no single side"
-        return f"{x.name} {x.said(self.edge)} or {self.side}"
+            words = {"all": f"any {tried}", "none": f"no {tried}"}
+            return words.get(self.side, f"some {tried}, on no single side")
+        return f"{x.name} {self.edge:.3g} {x.unit}".rstrip() + f" or {self.side}"
 
 
 def passes_of(window: Window) -> list[Pass]:
@@ -200,6 +204,11 @@ def pass_at_base(window: Window) -> Pass | None:
     return _pass(window, y.base, np.array(line))
 
 
+def turned(window: Window) -> Window:
+    """Return a contour with its axes exchanged."""
+    return replace(window, x=window.y, y=window.x, grid=window.grid.T)
+
+
 def _pass(window: Window, at: Any, results: Array) -> Pass:
     x, line = window.x, window.line
     assert x is not None
@@ -218,115 +227,3 @@ def _pass(window: Window, at: Any, results: Array) -> Pass:
         return Pass(at, float(x.values[inside]), side)
     share = (line - low) / (high - low)
     return Pass(at, float(x.values[n] + share * (x.values[n + 1] - x.values[n])), side)
-
-
-def answer(plan: SweepPlan, rows: list[Row], window: Window) -> str:
-    """Return what the sweep shows, in one sentence."""
-    finished = [row for row in rows if row["outcome"] == "finished"]
-    if not finished:
-        return f"None of the {len(rows)} runs finished; the reasons stand below."
-    what = _asked(plan, window)
-    counted = _counted(rows, finished)
-    passes = passes_of(window)
-    if not passes:
-        return _between(plan, window, finished) + counted
-    if window.y is None:
-        return f"{what} with {passes[0].said(window.x)}{counted}"  # type: ignore[arg-type]
-    at_base = pass_at_base(window)
-    if at_base is not None:
-        said = at_base.said(window.x)  # type: ignore[arg-type]
-        return f"At {window.y.name} {window.y.said(at_base.at)}, as in the base, {_lower(what)} with {said}{counted}"
-    if window.y.numeric:
-        ends = [passes[0], passes[-1]]
-    else:
-        ends = passes[:3]
-    told = "; at ".join(f"{window.y.said(p.at)} with {p.said(window.x)}" for p in ends)  # type: ignore[arg-type]
-    return f"{what} at {window.y.name} {told}{counted}"
-
-
-def _asked(plan: SweepPlan, window: Window) -> str:
-    aim = plan.base.aim
-    if window.result == "time_to_aim" and aim is not None and window.line is not None:
-        return f"{aim.reach:g} degC is reached within {duration(window.line)}"
-    return f"The slowest point ends {'below' if window.below else 'above'} {window.line:g} degC"
-
-
-def _lower(text: str) -> str:
-    return text[0].lower() + text[1:]
-
-
-def _counted(rows: list[Row], finished: list[Row]) -> str:
-    passing = sum(bool(row["passes"]) for row in rows)
-    text = f"; {passing} of {len(rows)} runs pass"
-    failed = len(rows) - len(finished)
-    return text + (f", {failed} failed." if failed else ".")
-
-
-def _between(plan: SweepPlan, window: Window, finished: list[Row]) -> str:
-    heads = Heads(plan)
-    head = heads.results[window.result]
-    values = known(finished, head)
-    best = min((row for row in finished if row[head] is not None), key=lambda row: row[head])
-    settings = ", ".join(setting(plan, name, best[h]) for name, h in heads.varied.items())
-    if window.result == "time_to_aim":
-        return f"The aim is reached after {duration(min(values))} at best, with {settings}"
-    return f"The slowest point ends between {min(values):.1f} and {max(values):.1f} degC"
-
-
-def setting(plan: SweepPlan, name: str, value: Any) -> str:
-    """Return a setting in words."""
-    unit = plan.unit_of(name)
-    return f"{name} {value:.4g} {unit}".rstrip() if unit is not None else f"{name} {value}"
-
-
-@dataclass(frozen=True)
-class Weight:
-    """How much a result hangs on one thing that varies.
-
-    Parameters
-    ----------
-    name
-        What varies.
-    share
-        Of the result's variance, what the means over its settings explain, 0 to 1.
-    low, high
-        Settings with the smallest and the largest mean.
-    swing
-        Between these means, in the unit of the result.
-
-    """
-
-    name: str
-    share: float
-    low: Any
-    high: Any
-    swing: float
-
-
-def weights_of(plan: SweepPlan, rows: Sequence[Row], window: Window) -> list[Weight]:
-    """Return what the result hangs on, the most important first; drawn numbers are put in bins."""
-    heads = Heads(plan)
-    head = heads.results[window.result]
-    usable = [row for row in rows if row[head] is not None]
-    values = np.array([row[head] for row in usable])
-    if len(values) < 3 or np.ptp(values) == 0.0:
-        return []
-    found = []
-    for name, column in heads.varied.items():
-        groups = _groups([row[column] for row in usable], plan.unit_of(name) is not None)
-        means = np.array([values[at].mean() for _, at in groups])
-        sizes = np.array([len(at) for _, at in groups])
-        share = float(np.sum(sizes * (means - values.mean()) ** 2) / np.sum((values - values.mean()) ** 2))
-        low, high = int(np.argmin(means)), int(np.argmax(means))
-        found.append(Weight(name, share, groups[low][0], groups[high][0], float(means[high] - means[low])))
-    return sorted(found, key=lambda w: -w.share)
-
-
-def _groups(settings: list[Any], numeric: bool) -> list[tuple[Any, Array]]:
-    """Return settings and the rows that have them; many numbers in bins of as many rows each."""
-    distinct = list(dict.fromkeys(settings))
-    if not numeric or len(distinct) <= max(4, len(settings) // 4):
-        return [(s, np.flatnonzero([t == s for t in settings])) for s in distinct]
-    order = np.argsort(np.array(settings, dtype=float), kind="stable")
-    bins = np.array_split(order, max(2, min(6, len(settings) // 5)))
-    return [(float(np.mean([settings[i] for i in at])), at) for at in bins]

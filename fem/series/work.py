@@ -118,7 +118,8 @@ def _run(task: Task, part: Path, scratch: Path) -> tuple[dict[str, Any] | None, 
 
 def reason_of(error: CaseError) -> str:
     """Return the problems of a case in one line."""
-    return "; ".join(f"{p.place.removeprefix('--set ')}: {p.message.removesuffix(' (--set)')}" for p in error.problems)
+    said = [(p.place.removeprefix("--set "), p.message.removesuffix(" (--set)")) for p in error.problems]
+    return "; ".join(f"{place}: {message}" for place, message in said)
 
 
 def _content(folder: Path) -> dict[str, bytes]:

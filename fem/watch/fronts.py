@@ -42,6 +42,11 @@ class Fronts:
         self._rays = {name: _Track(body, product, ray, name) for name, ray in rays.items()}
         self._last: dict[str, tuple[float, float | None]] = {}
 
+    @property
+    def sharp(self) -> bool:
+        """Whether the level is a jump of the enthalpy, whose place `see` reads from `u` alone."""
+        return any(measure.sharp for _, measure in self._shares)
+
     def see(self, time: float, u: Array, T: Array) -> dict[str, tuple[float | None, float | None]]:
         """Return position [m] and speed [m/s] on each ray; None where there is no front.
 

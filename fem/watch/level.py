@@ -12,9 +12,6 @@ from fem.material import Material
 from fem.watch.product import Product
 from fem.watch.schedule import Level
 
-# Latent heat released within this range counts as released at one temperature [K].
-JUMP = 0.2
-
 
 @dataclass(frozen=True, eq=False)
 class FrozenShare:
@@ -54,19 +51,10 @@ class FrozenShare:
 
 
 def frozen_share(curve: Curve, temperature: float) -> FrozenShare:
-    """Return the measure of a level, at a jump of the curve where the level lies in one.
-
-    A jump is an interval of at most `JUMP` around the level that takes more heat than 20 K of
-    its surroundings do.
-    """
-    rows = curve.T
-    i = int(np.clip(np.searchsorted(rows, temperature), 1, len(rows) - 1))
-    first, last = rows[i - 1], rows[i]
-    if last - first <= JUMP:
-        heat = curve.H[i] - curve.H[i - 1]
-        around = min(float(curve.capacity(first - JUMP)), float(curve.capacity(last + JUMP)))
-        if heat > 20.0 * around:
-            return FrozenShare(curve, float(curve.H[i - 1]), float(curve.H[i]), temperature)
+    """Return the measure of a level, at a jump of the curve where the level lies in one."""
+    i = int(np.clip(np.searchsorted(curve.T, temperature), 1, len(curve.T) - 1))
+    if curve.jumps(i):
+        return FrozenShare(curve, float(curve.H[i - 1]), float(curve.H[i]), temperature)
     return FrozenShare(curve, 0.0, 0.0, temperature)
 
 

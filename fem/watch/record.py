@@ -79,14 +79,17 @@ class Record:
             self._next += 1
             if time > step.before.time:
                 u, carried = step.at(time)
-                yield self._row(problem, problem.look(time, u), time, carried)
+                at_front = step.chord(time) if self.fronts.sharp else u
+                yield self._row(problem, problem.look(time, u), time, carried, at_front)
         if last:
             look = problem.look(end, step.after.u)
             if (self._next - 1) * self.watch.every < end * (1 - 1e-12):
                 yield self._row(problem, look, end, step.after.carried)
             self.ledger.end_stage(look, step.after.carried)
 
-    def _row(self, problem: HeatProblem, look: Look, time: float, carried: Array) -> Rows:
+    def _row(
+        self, problem: HeatProblem, look: Look, time: float, carried: Array, at_front: Array | None = None
+    ) -> Rows:
         u, T = look.u, look.state.temperature
         curves: Row = {"time [s]": time}
         for name, value in self.gauge.points(T).items():
@@ -100,7 +103,7 @@ class Record:
             curves[f"heat_load.{surface} [W]"] = loads.get(surface, 0.0)
         curves["heat_removed [J]"] = sum(self.ledger.left(look, carried).values())
         fronts: Row = {"time [s]": time}
-        for name, (position, speed) in self.fronts.see(time, u, T).items():
+        for name, (position, speed) in self.fronts.see(time, u if at_front is None else at_front, T).items():
             fronts[f"{name}.position [mm]"] = None if position is None else position * 1e3
             fronts[f"{name}.speed [mm/min]"] = None if speed is None else speed * 6e4
         return Rows(curves, fronts)

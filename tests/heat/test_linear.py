@@ -7,7 +7,8 @@ import pytest
 
 from fem.heat import forms, linear
 from fem.heat.body import Body
-from fem.heat.linear import BandedCholesky, Factor, Multigrid, Pattern, SparseLDL, factor_for, narrow_order
+from fem.heat.linear import BandedCholesky, Factor, Multigrid, SparseLDL, factor_for
+from fem.heat.pattern import Pattern, narrow_order, width
 from tests.pieces import bar_body, slab_body
 
 RUNGS: dict[str, Callable[[Pattern], Factor]] = {
@@ -28,11 +29,6 @@ def system(body: Body, factor: float) -> np.ndarray:
     data = factor * np.sum([body.pattern.gather(*entries) for entries in regions], axis=0)
     data[body.pattern.diagonal] += 1.0
     return data
-
-
-def width(pattern: Pattern, order: np.ndarray) -> int:
-    place = np.argsort(order)
-    return int(np.abs(place[pattern.rows] - place[pattern.columns]).max())
 
 
 @rung

@@ -9,9 +9,9 @@ import pytest
 
 from fem.errors import RunFailure
 from fem.march.control import Control
-from fem.march.march import march
+from fem.march.march import _forecast, march
 from fem.march.newton import Effort
-from fem.march.step import Step, begin
+from fem.march.step import Moment, Step, begin
 from tests.march.tanks import START, Decay, Look
 
 
@@ -99,3 +99,23 @@ def test_a_march_that_cannot_go_on_says_so_and_keeps_its_last_state() -> None:
         take_all()
     assert failure.value.time == taken[-1].after.time > 0.3
     assert failure.value.causes
+
+
+def moments(value, times) -> list[Moment]:
+    none = np.zeros(0)
+    return [Moment(t, np.array([value(t)]), none, none, none, none, np.array([0.0]), None) for t in times]
+
+
+def test_a_parabola_in_time_is_foreseen_exactly_whatever_the_steps() -> None:
+    history = moments(lambda t: 3.0 + 2.0 * t + 0.1 * t * t, (0.0, 1.0, 3.0))
+    start, guess, share = _forecast(history, 4.5)
+    assert guess[0] == pytest.approx(3.0 + 9.0 + 0.1 * 4.5**2)
+    assert start[0] == pytest.approx(guess[0])
+    assert 0.0 < share < 0.5
+
+
+def test_the_iteration_starts_no_further_from_the_line_than_half_its_rise() -> None:
+    history = moments({0.0: 0.0, 1.0: 0.0, 2.0: 1.0}.__getitem__, (0.0, 1.0, 2.0))
+    start, guess, _ = _forecast(history, 3.0)
+    assert guess[0] == pytest.approx(3.0)
+    assert start[0] == pytest.approx(2.5)

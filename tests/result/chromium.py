@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import base64
+import fcntl
 import itertools
 import json
 import os
@@ -39,8 +40,8 @@ class Browser:
         self._in, write = os.pipe()
 
         def give() -> None:
-            # The browser reads commands on descriptor 3 and answers on 4, which may be taken already.
-            moved = os.dup(read), os.dup(write)
+            # The browser reads commands on descriptor 3 and answers on 4: first both move out of the way.
+            moved = [fcntl.fcntl(end, fcntl.F_DUPFD, 10) for end in (read, write)]
             os.dup2(moved[0], 3)
             os.dup2(moved[1], 4)
 

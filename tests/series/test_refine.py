@@ -10,6 +10,7 @@ from click.testing import CliRunner
 from fem.case.read import load, loads
 from fem.cli import rimefront
 from fem.exact import InwardFreezing, Neumann
+from fem.march.control import ACCURACIES
 from fem.mesh.build import build
 from fem.mesh.level import coarse_cells
 from fem.mesh.shape import Bar, MeshShape
@@ -221,7 +222,7 @@ def test_where_no_aim_is_met_no_error_of_a_time_is_stated() -> None:
 
 def test_a_tolerance_of_its_own_takes_the_place_of_the_accuracys() -> None:
     assert small("stepping.tolerance=0.1 %").stepping.control().tolerance == pytest.approx(1e-3)
-    assert small().stepping.control().tolerance == pytest.approx(3e-3)
+    assert small().stepping.control().tolerance == ACCURACIES["standard"].tolerance
 
 
 def test_the_command_prints_a_table_and_json(tmp_path) -> None:
