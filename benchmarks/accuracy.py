@@ -17,7 +17,7 @@ from table import Tables, options
 
 CASE = Path(__file__).parent.parent / "cases" / "workshop_bar.toml"
 OFFSETS = (1.0, 0.98, 0.96, 0.94, 0.92)
-CELLS = (1.0e-3, 0.7e-3, 0.6e-3, 0.5e-3, 0.35e-3, 0.25e-3)
+CELLS = (1.0e-3, 0.7e-3, 0.55e-3, 0.45e-3, 0.35e-3, 0.25e-3)
 TOLERANCES = (5e-2, 2e-2, 1e-2, 5e-3, 2e-3, 1e-3, 3e-4)
 T_WALL, T_START, DEPTH = -20.0, 5.0, 0.08
 SLAB = """

@@ -59,7 +59,7 @@ def marches(place: Path, into: str) -> list[float]:
 
 
 def killed(place: Path, times: int, whole: float) -> tuple[int, int, bool]:
-    """Kill a sweep so many times; return runs lost in mid-run, runs done again, whether the table is whole."""
+    """Kill a sweep; return runs lost in mid-run, finished runs done again, and whether the table is whole."""
     stamps: dict[str, int] = {}
     lost = again = 0
     for _ in range(times):

@@ -66,4 +66,6 @@ class Tables:
 
 
 def _text(value: Any) -> str:
-    return f"{value:.3g}" if isinstance(value, float) else str(value)
+    if not isinstance(value, float):
+        return str(value)
+    return f"{value:.1f}" if abs(value) >= 1000.0 else f"{value:.3g}"

@@ -99,7 +99,9 @@ def slopes_of(case: Case) -> dict[str, float]:
 
     def spy(self: HangsOn, arrival):  # type: ignore[no-untyped-def]
         sensitivity = self._sensitivity
-        seen.update(zip((i.key for i in sensitivity.inputs), map(float, sensitivity.effects.time), strict=True))
+        seen.update(
+            zip((i.key for i in sensitivity.inputs), map(float, sensitivity.effects.time), strict=True)
+        )
         return as_dict(self, arrival)
 
     HangsOn.as_dict = spy  # type: ignore[method-assign]
@@ -117,7 +119,9 @@ def hypercube(name: str, overrides: list[str], samples: int) -> dict[str, float 
     keys = list(case.uncertainty or {})
     draws = norm.ppf(qmc.LatinHypercube(len(keys), rng=7).random(samples)) / HALF_WIDTH
     exact = tight(case)
-    times = [time_of(run(moved(exact, dict(zip(keys, row, strict=True)), plan), ranges=False)) for row in draws]
+    times = [
+        time_of(run(moved(exact, dict(zip(keys, row, strict=True)), plan), ranges=False)) for row in draws
+    ]
     low, high = np.percentile(times, [2.5, 97.5])
     return {
         "case": name,

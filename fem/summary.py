@@ -6,6 +6,7 @@ import logging
 import platform
 import time as clock
 from contextlib import suppress
+from functools import cache
 from importlib.metadata import version
 from typing import Any
 
@@ -229,7 +230,8 @@ class Summary:
             self.out.summarise(self._last)
 
 
+@cache
 def versions() -> dict[str, str]:
-    """Return the versions of what computed the result."""
+    """Return the versions of what computed the result; looking them up takes as long as a step."""
     names = ("rimefront", "numpy", "scipy", "scikit-fem")
     return {"python": platform.python_version(), **{name: version(name) for name in names}}

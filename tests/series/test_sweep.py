@@ -156,6 +156,22 @@ def test_one_bad_case_does_not_stop_the_others(place: Path) -> None:
     assert "outside the piece" in (place / "sweeps" / "plan" / "report.html").read_text()
 
 
+def test_what_only_the_mesh_shows_is_a_failed_run_with_its_reason(place: Path) -> None:
+    case = (
+        (place / "small.toml")
+        .read_text()
+        .replace('["0 mm", "0 mm"]\n[watch.r', '["5.6 mm", "11.6 mm"]\n[watch.r')
+    )
+    (place / "small.toml").write_text(case, encoding="utf-8")
+    corners = '[vary.corner]\nkey = "shape.corner"\nvalues = ["3 mm", "5 mm"]\n'
+    (place / "plan.toml").write_text(PLAN.split("[vary.coolant]")[0] + corners, encoding="utf-8")
+    (bad,) = fem.sweep(place / "plan.toml", place / "out", processes=1).failed
+    assert bad["corner [mm]"] == 5.0
+    assert bad["reason"].startswith("watch: ")
+    assert "outside" in bad["reason"]
+    assert bad["folder"] == ""
+
+
 def test_a_march_that_fails_is_a_row_with_its_reason_and_is_not_done_again(place: Path) -> None:
     hopeless = '[vary.step]\nkey = "stepping.largest_step"\nvalues = ["5 s", "1e-9 s"]\n'
     (place / "plan.toml").write_text(PLAN.split("[vary.coolant]")[0] + hopeless, encoding="utf-8")

@@ -105,6 +105,28 @@ def test_a_lost_process_costs_its_own_task_one_try_and_no_other_anything(tmp_pat
     assert tries == {name: 2 if name.startswith(("once", "always")) else 1 for name in names}
 
 
+def test_a_process_ends_in_mid_task_when_who_hands_out_is_gone(tmp_path: Path) -> None:
+    code = (
+        f"from tests.series.toy_work import hand_out\nif __name__ == '__main__': hand_out({str(tmp_path)!r})"
+    )
+    script = tmp_path / "script.py"
+    script.write_text(code, encoding="utf-8")
+    root = str(Path(__file__).parents[2])
+    parent = subprocess.Popen([sys.executable, str(script)], env={**os.environ, "PYTHONPATH": root})
+    begun, deadline = tmp_path / "long", time.monotonic() + 30
+    while not (begun.exists() and begun.read_text().endswith("\n")):
+        assert time.monotonic() < deadline
+        time.sleep(0.01)
+    child = Path("/proc") / begun.read_text().strip()
+    assert child.exists()
+    parent.kill()
+    parent.wait()
+    deadline = time.monotonic() + 5
+    while child.exists() and "\nState:\tZ" not in (child / "status").read_text():
+        assert time.monotonic() < deadline, "the process has outlived its parent"
+        time.sleep(0.01)
+
+
 def test_a_process_lost_in_mid_run_leaves_the_table_as_it_would_have_been(
     tmp_path: Path, undisturbed: Path
 ) -> None:

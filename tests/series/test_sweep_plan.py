@@ -104,7 +104,7 @@ def test_a_whole_table_is_set_before_what_is_changed_in_it(place: Path) -> None:
     plan = read(
         place,
         '[vary.sugar]\nkey = "materials.mix.sucrose"\nvalues = ["10 %", "20 %"]\n'
-        '[vary.recipe]\n'
+        "[vary.recipe]\n"
         'options.rich = { "materials.mix" = { kind = "recipe", sucrose = "1 %", glucose = "9 %" } }\n',
     )
     assert [plan.case_of(p).materials["mix"].sucrose for p in plan.points()] == [10.0, 20.0]
@@ -200,9 +200,19 @@ def test_a_base_that_is_not_there(place: Path) -> None:
 def test_the_name_of_a_run_is_that_of_its_case_and_not_of_its_layout() -> None:
     keep = Keep()
     key = key_of(small(), keep)
-    spelled = SMALL.replace('"12 mm"', '"1.2 cm"').replace('"10 min"', '"600 s"  # as long')
+    spelled = SMALL.replace('"-22 degC"', '"251.15 K"').replace('"10 min"', '"600 s"  # as long')
     assert key_of(small(text=spelled), keep) == key
     assert key_of(small(text=SMALL.replace("A small bar", "Another title")), keep) == key
     assert key_of(small('stepping.accuracy="standard"'), keep) == key
     assert key_of(small('shape.thickness="12.001 mm"'), keep) != key
     assert key_of(small(), Keep(ranges=True)) != key
+
+
+def test_the_plan_of_the_reference_reads(cases: Path, tmp_path: Path) -> None:
+    text = (cases / "sweeps" / "README.md").read_text(encoding="utf-8")
+    block = text.split("```toml\n")[1].split("```")[0]
+    (tmp_path / "workshop_bar.toml").write_bytes((cases / "workshop_bar.toml").read_bytes())
+    (tmp_path / "plan.toml").write_text(block.replace("../", ""), encoding="utf-8")
+    plan = read_plan(tmp_path / "plan.toml")
+    assert plan.runs == 3 * 2 * 16
+    assert [axis.names for axis in plan.axes] == [("coolant", "h"), ("recipe",), ("fill",)]

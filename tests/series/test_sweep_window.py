@@ -89,7 +89,9 @@ def test_where_no_coolant_will_do_the_answer_says_what_will(tmp_path: Path) -> N
     plan = plan_of(tmp_path, COOLANT + H)
     rows = rows_of(plan, lambda s: 1500.0 - 2.0 * (s["h"] - 200.0))
     said = answer(plan, rows, window_of(plan, rows))
-    assert said.startswith("At coolant -22 degC, as in the base, -12 degC is reached within 20 min with h 350")
+    assert said.startswith(
+        "At coolant -22 degC, as in the base, -12 degC is reached within 20 min with h 350"
+    )
     rows = rows_of(plan, lambda s: 2000.0)
     assert "with no h from 100 W/m2/K to 400 W/m2/K; 0 of 20" in answer(plan, rows, window_of(plan, rows))
 
@@ -140,7 +142,7 @@ def test_drawn_samples_are_ranked_in_bins(tmp_path: Path) -> None:
 
 
 def test_limits_decide_which_runs_pass(tmp_path: Path) -> None:
-    limits = '[limits.h]\nmost = "300 W/m2/K"\n[limits.mean]\nmost = "-18 degC"\n[limits.time_to_aim]\nmost = "15 min"\n'
+    limits = '[limits]\nh.most = "300 W/m2/K"\nmean.most = "-18 degC"\ntime_to_aim.most = "15 min"\n'
     plan = plan_of(tmp_path, COOLANT + H + limits)
     rows = rows_of(plan, linear)
     assert window_of(plan, rows).line == 900.0
@@ -206,6 +208,8 @@ def test_without_an_aim_the_temperature_at_the_end_is_drawn(tmp_path: Path) -> N
     window = window_of(plan, rows)
     assert (window.result, window.line) == ("slowest", -14.0)
     assert [p.edge for p in passes_of(window)] == [pytest.approx(-14.0 / 0.75)]
-    assert answer(plan, rows, window).startswith("The slowest point ends below -14 degC with coolant -18.7 degC")
+    assert answer(plan, rows, window).startswith(
+        "The slowest point ends below -14 degC with coolant -18.7 degC"
+    )
     assert np.isfinite(window.grid).all()
     write_page(plan, rows, {"met": 0, "passes": 4, "failed": [], "program": "0"}, tmp_path)

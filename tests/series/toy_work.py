@@ -4,11 +4,14 @@ from __future__ import annotations
 
 import os
 import signal
+import time
 from pathlib import Path
+
+from fem.series.workers import Processes
 
 
 def toy_work(task: tuple[str, str]) -> str:
-    """Note that the task was begun, and do it; "once" kills its process the first time, "always" ever."""
+    """Note that the task was begun, and do it; "once" kills its process the first time, "always" ever, "long" takes a minute."""
     name, folder = task
     begun = Path(folder) / name
     first = not begun.exists()
@@ -16,4 +19,11 @@ def toy_work(task: tuple[str, str]) -> str:
         file.write(f"{os.getpid()}\n")
     if name.startswith("always") or (name.startswith("once") and first):
         os.kill(os.getpid(), signal.SIGKILL)
+    if name.startswith("long"):
+        time.sleep(60)
     return f"{name} is done"
+
+
+def hand_out(folder: str) -> None:
+    """Hand out one long task."""
+    list(Processes(toy_work, 1).run(iter([("long", folder)])))

@@ -32,7 +32,7 @@ def errors() -> dict[str, list[float] | int]:
         (-20.0, 5.0),
     )
     ray = Ray.model_validate({"from": ["0 mm", "1 mm"], "to": ["70 mm", "1 mm"]})
-    fronts = Fronts(Product(body), Level.model_validate("freezing point"), {"depth": ray})
+    fronts = Fronts(Product(body), Level("freezing point"), {"depth": ray})
     assert fronts.sharp
     speed = float(LAW.front(np.array([1.0]))[0])
     times = np.linspace((5e-3 / speed) ** 2, (15e-3 / speed) ** 2, 80)

@@ -35,7 +35,7 @@ def _limit(name: str, phi: float, open_case: str, half: float) -> Check:
     source = (
         "quasi-steady limit: one Poisson problem, closed by its series (computed from the stated formula)"
     )
-    return Check(name, source, (half / 8, half / 16), samples, {"total time factor": Bound(0.005)})
+    return Check(name, source, (half / 10, half / 20), samples, {"total time factor": Bound(0.005)})
 
 
 def square() -> Check:

@@ -111,6 +111,7 @@ RECIPE = 'kind = "recipe"\nsucrose = "18 %"\n'
 
 def recipe() -> Check:
     """Return the check by the similarity solution of a real recipe's own curves."""
+
     @cache
     def law() -> tuple[Similarity, float]:
         case = text(
