@@ -117,8 +117,11 @@ class SweepProgress:
             left = f", {duration(each * (seen.of - seen.done))} left"
         failed = f", {seen.failed} failed" if seen.failed else ""
         title = f"{seen.done} of {seen.of} runs{failed}{left}"
-        heads = [head for head in (self._rows[-1] if self._rows else {}) if head not in ("folder", "reason")]
-        table = Table(*heads, title=title, title_justify="left", box=None, pad_edge=False)
+        # What varies, the time and the verdict; the rest would not fit on a line.
+        every = list(self._rows[-1]) if self._rows else []
+        heads = [*every[: every.index("passes") + 1], "outcome"] if every else []
+        shown = [head.replace(" [", "\n[") for head in heads]
+        table = Table(*shown, title=title, title_justify="left", box=None, pad_edge=False)
         for row in self._rows:
             table.add_row(*(_cell(row[head]) for head in heads))
         return table

@@ -61,7 +61,8 @@ def _plain(value: Any) -> Any:
     if isinstance(value, (int, float, np.number)):
         return f"{float(value):.12g}"
     if isinstance(value, np.ndarray):
-        return [str(value.shape), hashlib.sha256(np.ascontiguousarray(value).tobytes()).hexdigest()]
+        text = " ".join(f"{x:.12g}" for x in value.ravel().tolist())
+        return [str(value.shape), hashlib.sha256(text.encode()).hexdigest()]
     if isinstance(value, BaseModel):
         fields = {name: getattr(value, name) for name in type(value).model_fields}
         return [type(value).__name__, _fields(fields)]

@@ -117,7 +117,8 @@ def _contour(
         handles.append(Patch(fc="#e9e9e9", ec=GREY, lw=0.4, label="not reached"))
     _axes(ax, x, y)
     if handles:
-        figure.legend(handles=handles, loc="outside upper left", ncols=4)
+        long = sum(len(str(handle.get_label())) for handle in handles) > 60
+        figure.legend(handles=handles, loc="outside upper left", ncols=2 if long else 4)
 
 
 def _pass_line(ax: Axes, window: Window, values: Any, scale: float, unit: str) -> list[Any]:
@@ -159,7 +160,7 @@ def _limit_line(ax: Axes, window: Window, said: str, grid: Array, level: float, 
         ax.contour(
             x.values, y.values, values, [level], colors=[LIMIT], linewidths=1.6, linestyles="--", zorder=3
         )
-    return Line2D([], [], color=LIMIT, lw=1.6, ls="--", label=f"limit: {said}")
+    return Line2D([], [], color=LIMIT, lw=1.6, ls="--", label=_typed(f"limit: {said}"))
 
 
 def _walls(ax: Axes, dimension: Dimension, along_x: bool) -> list[Any]:
@@ -219,6 +220,7 @@ def _ranking(ax: Axes, window: Window, weights: Sequence[Weight]) -> None:
         ax.annotate(told, place, xytext=(4, 0), textcoords="offset points", va="center", fontsize=7.5)
     ax.set_yticks(range(len(weights)), [label_of(w.name) for w in weights])
     ax.invert_yaxis()
+    ax.set_axisbelow(True)
     ax.grid(visible=False, axis="y")
     ax.set_xlim(0.0, 1.25 * float(swings.max()) / scale or 1.0)
     what = _LABELS[window.result]

@@ -68,7 +68,8 @@ def test_one_leaf_moves_and_nothing_else() -> None:
 def test_a_quantity_against_time_moves_as_a_whole() -> None:
     text = SMALL.replace(
         'coolant = "-22 degC"',
-        'coolant = { time = { unit = "s", values = [0, 60] }, value = { unit = "degC", values = [-20, -30] } }',
+        'coolant = { time = { unit = "s", values = [0, 60] }, '
+        'value = { unit = "degC", values = [-20, -30] } }',
     )
     moved = value_of(
         move(loads(text), "stages.freeze.surfaces.outside.coolant", "1 K", 2.0),

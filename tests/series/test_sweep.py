@@ -13,6 +13,7 @@ import fem
 from fem.errors import CaseError
 from fem.result.folder import open_run
 from fem.series.sweep import Progress
+from fem.series.sweep_plan import read_plan
 from tests.conftest import CASES
 from tests.pieces import SMALL
 
@@ -227,12 +228,13 @@ def test_a_sweep_is_quiet_in_a_pipe_and_answers_first(place: Path) -> None:
     assert "runs pass." in done.stdout.splitlines()[0]
 
 
-def test_the_shipped_plan_reads(cases: Path) -> None:
-    from fem.series.sweep_plan import read_plan
-
+def test_the_shipped_plan_reads_and_its_pass_line_is_where_it_says(cases: Path) -> None:
     plan = read_plan(cases / "sweeps" / "coolant_and_agitation.toml")
     assert plan.runs == 130
     assert plan.limits == {"h": (float("-inf"), 600.0)}
+    (point,) = (p for p in plan.points() if p.labels == {"coolant": "-27 degC", "h": "151.878 W/m2/K"})
+    result = fem.run(plan.case_of(point), ranges=False, numerical_error=False)
+    assert result.summary["aim"]["time_s"] == pytest.approx(1200.0, rel=0.01)
 
 
 def test_python_finds_every_function_and_loads_none_before() -> None:

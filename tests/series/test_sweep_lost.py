@@ -57,21 +57,16 @@ def wait_for(place: Path, count: int) -> None:
         time.sleep(0.002)
 
 
-@pytest.mark.parametrize("whole", [True, False], ids=["the whole session", "only the one that hands out"])
-def test_a_killed_sweep_goes_on_where_it_stood(tmp_path: Path, undisturbed: Path, whole: bool) -> None:
+def test_a_killed_sweep_goes_on_where_it_stood(tmp_path: Path, undisturbed: Path) -> None:
     process = begun(tmp_path)
     wait_for(tmp_path, random.randint(1, RUNS - 3))
-    (os.killpg if whole else os.kill)(process.pid, signal.SIGKILL)
+    os.killpg(process.pid, signal.SIGKILL)
     process.wait()
-    # Processes without a parent end at once, so that nothing is done behind our back.
-    time.sleep(0.3)
     before = {
         key: (tmp_path / "out/runs" / key / "summary.json").stat().st_mtime_ns for key in finished(tmp_path)
     }
     assert 0 < len(before) < RUNS
     assert not (tmp_path / "out" / "table.csv").exists()
-    time.sleep(0.5)
-    assert finished(tmp_path) == set(before)
     done = subprocess.run(
         [sys.executable, "-m", "fem.cli", "sweep", "plan.toml", "--into", "out", "--json"],
         cwd=tmp_path, capture_output=True, text=True, check=True,

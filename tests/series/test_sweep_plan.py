@@ -187,10 +187,10 @@ def test_a_base_that_does_not_read_is_said_in_its_own_lines(place: Path) -> None
 
 
 def test_a_base_that_does_not_mesh_is_refused(place: Path) -> None:
-    (place / "small.toml").write_text(
-        SMALL.replace('centre = ["0 mm"', 'centre = ["90 mm"'), encoding="utf-8"
-    )
-    assert "outside the piece" in refused(place, LIST)
+    # Within what the check of the case knows of the bar, and in none of its cells.
+    beyond = SMALL.replace('centre = ["0 mm", "0 mm"]', 'centre = ["5.6 mm", "11.6 mm"]')
+    (place / "small.toml").write_text(beyond.replace('"3 mm"', '"5 mm"'), encoding="utf-8")
+    assert "outside" in refused(place, LIST)
 
 
 def test_a_base_that_is_not_there(place: Path) -> None:

@@ -11,7 +11,10 @@ from fem.series.workers import Processes
 
 
 def toy_work(task: tuple[str, str]) -> str:
-    """Note that the task was begun, and do it; "once" kills its process the first time, "always" ever, "long" takes a minute."""
+    """Note that the task was begun, and do it.
+
+    One called "once" kills its process the first time, "always" every time, "long" takes a minute.
+    """
     name, folder = task
     begun = Path(folder) / name
     first = not begun.exists()
