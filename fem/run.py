@@ -12,8 +12,9 @@ from typing import Any
 
 from threadpoolctl import threadpool_limits
 
-from fem.case.case import Case, Stage
+from fem.case.case import Case
 from fem.case.portable import portable
+from fem.ending import Ending
 from fem.errors import RunFailure
 from fem.estimate.by_hand import estimates
 from fem.estimate.by_poisson import poisson
@@ -22,12 +23,9 @@ from fem.estimate.numerical import twin_of
 from fem.hangs_on import HangsOn
 from fem.heat.problem import HeatProblem
 from fem.march.march import Moment, Step, begin, march
-from fem.mesh.domain import Array
 from fem.plan import Plan
 from fem.result.folder import Result, RunFolder
 from fem.summary import Summary
-from fem.watch.arrival import Arrival
-from fem.watch.gauge import Gauge
 from fem.watch.record import Record
 
 log = logging.getLogger("fem.run")
@@ -148,42 +146,6 @@ def _steps(plan: Plan, record: Record, summary: Summary, hangs_on: HangsOn | Non
             if hangs_on is not None:
                 hangs_on.end_stage(stage, step, ending.met)
         summary.end_stage(stage, time, u, ending.why, ending.met)
-
-
-class Ending:
-    """Decides when a stage is over, and says why.
-
-    Parameters
-    ----------
-    stage
-        What is to end.
-    gauge
-        Reads the temperatures that the stage's condition names.
-    began, u
-        When it began [s] and the unknowns then.
-
-    """
-
-    def __init__(self, stage: Stage, gauge: Gauge, began: float, u: Array):
-        self.latest = began + stage.lasts
-        self.why = "its time was up"
-        self.arrival: Arrival | None = None
-        self.met = False
-        if stage.until is not None:
-            until = stage.until
-            self.arrival = Arrival(lambda u: gauge.measure(u, until.at), until.temperature, until.below)
-            self._said = f"{until.at} {'<=' if until.below else '>='} {until.temperature:g} degC"
-            self.why = f"its time was up before {self._said}"
-            self.met = self.arrival.lag(u) <= 0.0
-            if self.met:
-                self.why = f"{self._said} held from its start"
-
-    def stop(self, step: Step) -> float | None:
-        """Return when the stage's condition is met in a step, or None."""
-        time = self.arrival.within(step) if self.arrival else None
-        if time is not None:
-            self.met, self.why = True, f"{self._said} was reached"
-        return time
 
 
 class _Callable(ModuleType):

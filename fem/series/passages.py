@@ -9,11 +9,11 @@ import numpy as np
 from threadpoolctl import threadpool_limits
 
 from fem.curve import Array
+from fem.ending import Ending
 from fem.errors import RunFailure
 from fem.heat.problem import HeatProblem
 from fem.march.march import Effort, Step, begin, march
 from fem.plan import Plan
-from fem.run import Ending
 from fem.sensitivity import Input, Sensitivity
 from fem.watch.arrival import Arrival
 from fem.watch.gauge import Gauge
