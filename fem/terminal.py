@@ -210,23 +210,23 @@ def show_ranking(console: Console, summary: dict[str, Any]) -> None:
         console.print(f"({remark})", style="yellow", soft_wrap=True)
 
 
+_VERDICT_HEADS = ("quantity", "exact", "ours", "error", "bound", "rate", "verdict")
+_VERDICT = "{:<21} {:>12} {:>12} {:>8} {:>8} {:>4} {:>7}"
+
+
 def show_verdicts(verdicts: Iterable[Any], as_json: bool) -> bool:
     """Print the lines of ``verify`` as they come; return whether all passed."""
-    lines = []
-    console = Console(stderr=as_json, highlight=False)
-    heads = ("check", "quantity", "exact", "ours", "error", "bound", "rate", "verdict")
-    table = Table(*heads, box=None, header_style="bold", pad_edge=False)
+    lines: list[Any] = []
+    console = Console(stderr=as_json, highlight=False, markup=False)
     with Console(stderr=True).status("running cases with exact answers") as status:
         for verdict in verdicts:
+            if not lines or lines[-1].check != verdict.check:
+                console.print(f"\n{verdict.check}: {verdict.source}", soft_wrap=True, style="cyan")
+                console.print(_VERDICT.format(*_VERDICT_HEADS), style="bold")
             lines.append(verdict)
-            cells = (*verdict.cells(), "passes" if verdict.passed else "FAILS")
-            table.add_row(*cells, style=None if verdict.passed else "bold red")
+            cells = (*verdict.cells()[1:], "passes" if verdict.passed else "FAILS")
+            console.print(_VERDICT.format(*cells), style=None if verdict.passed else "bold red")
             status.update(f"{len(lines)} lines done, last: {verdict.check}")
-    console.print(table)
-    sources = {verdict.check: verdict.source for verdict in lines}
-    console.print()
-    for check, source in sources.items():
-        console.print(f"{check}: {source}", soft_wrap=True)
     passed = all(verdict.passed for verdict in lines)
     console.print()
     console.print(
